@@ -1,0 +1,53 @@
+import adapter from '@sveltejs/adapter-node';
+import { vitePreprocess } from '@sveltejs/vite-plugin-svelte';
+
+/** @type {import('@sveltejs/kit').Config} */
+const config = {
+	preprocess: vitePreprocess(),
+	kit: {
+		adapter: adapter({ precompress: true }),
+		// The shell is one prerendered page shown under every offline address: with relative asset
+		// paths it would look for its scripts below the visited address and stay blank.
+		paths: { relative: false },
+		// 'auto': hashes in prerendered pages, nonces in rendered ones. 'nonce' fails the build as
+		// soon as one page is prerendered.
+		csp: {
+			mode: 'auto',
+			directives: {
+				'default-src': ['self'],
+				'script-src': ['self'],
+				'style-src': ['self'],
+				'img-src': ['self', 'data:', 'blob:'],
+				'media-src': ['self', 'blob:'],
+				'font-src': ['self'],
+				'connect-src': ['self'],
+				'worker-src': ['self'],
+				'manifest-src': ['self'],
+				'form-action': ['self'],
+				'object-src': ['none'],
+				'base-uri': ['none'],
+				'frame-ancestors': ['none']
+			}
+		},
+		// Only what is named here is prerendered; following links would ask the server's own pages.
+		prerender: { crawl: false, entries: ['/', '/shell'] },
+		// Registered by AppUpdate.svelte, which also asks before an update takes over.
+		serviceWorker: { register: false },
+		typescript: {
+			config: (generated) => ({
+				...generated,
+				include: [
+					...generated.include,
+					'../migrations/**/*.ts',
+					'../playwright.config.ts',
+					'../eslint.config.js',
+					'../svelte.config.js'
+				],
+				// Kit leaves the service worker out; it is checked like everything else.
+				exclude: ['../node_modules/**']
+			})
+		}
+	}
+};
+
+export default config;

@@ -1,0 +1,68 @@
+import { sveltekit } from '@sveltejs/kit/vite';
+import tailwindcss from '@tailwindcss/vite';
+import { SvelteKitPWA } from '@vite-pwa/sveltekit';
+import { defineConfig } from 'vitest/config';
+
+export default defineConfig({
+	plugins: [
+		tailwindcss(),
+		sveltekit(),
+		SvelteKitPWA({
+			strategies: 'injectManifest',
+			srcDir: 'src',
+			filename: 'service-worker.ts',
+			// 'prompt' for ever: an update that reloads by itself loses what is being typed.
+			registerType: 'prompt',
+			injectRegister: false,
+			manifest: {
+				name: 'Tallybar',
+				short_name: 'Tallybar',
+				description:
+					'The rivet log of a home-built aeroplane, kept at the bench without a network.',
+				id: '/',
+				start_url: '/builds',
+				scope: '/',
+				display: 'standalone',
+				background_color: '#F3F4F0',
+				theme_color: '#F3F4F0',
+				icons: [
+					{ src: '/icon.svg', sizes: 'any', type: 'image/svg+xml' },
+					{ src: '/icon-192.png', sizes: '192x192', type: 'image/png' },
+					{ src: '/icon-512.png', sizes: '512x512', type: 'image/png' },
+					{
+						src: '/icon-maskable-512.png',
+						sizes: '512x512',
+						type: 'image/png',
+						purpose: 'maskable'
+					}
+				]
+			},
+			injectManifest: {
+				globPatterns: [
+					'client/**/*.{js,css,ico,png,svg,webp,webmanifest,woff2}',
+					'prerendered/**/*.{html,json}'
+				]
+			},
+			// Without version.json in the precache an error after a deploy makes kit reload for ever.
+			kit: { includeVersionFile: true }
+		})
+	],
+	define: {
+		// Workbox reads it; the service worker has no process.
+		'process.env.NODE_ENV': JSON.stringify(process.env.NODE_ENV ?? 'production')
+	},
+	build: { sourcemap: false },
+	test: {
+		expect: { requireAssertions: true },
+		projects: [
+			{
+				extends: true,
+				test: { name: 'unit', environment: 'node', include: ['src/**/*.test.ts'] }
+			},
+			{
+				extends: true,
+				test: { name: 'property', environment: 'node', include: ['tests/property/**/*.test.ts'] }
+			}
+		]
+	}
+});
