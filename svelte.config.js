@@ -17,6 +17,8 @@ const config = {
 				'default-src': ['self'],
 				'script-src': ['self'],
 				'style-src': ['self'],
+				// Kit's announcer of page changes, and drawings to scale, carry style attributes.
+				'style-src-attr': ['unsafe-inline'],
 				'img-src': ['self', 'data:', 'blob:'],
 				'media-src': ['self', 'blob:'],
 				'font-src': ['self'],

@@ -1,0 +1,5 @@
+// `npm run build`
+import { build } from './prepare.js';
+
+const { code } = await build({ show: true });
+process.exitCode = code;

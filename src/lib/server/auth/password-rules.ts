@@ -1,0 +1,42 @@
+import { ZxcvbnFactory } from '@zxcvbn-ts/core';
+import { adjacencyGraphs, dictionary } from '@zxcvbn-ts/language-common';
+
+/** Counted in characters as people count them (code points of the NFC form). */
+const LEAST = 10;
+export const MOST_PASSWORD = 200;
+
+/**
+ * The estimate reads so much of a password. It grows with the square of the length, on the thread
+ * that answers everybody; nothing this long is weak unless it repeats itself, which its start shows.
+ */
+const ESTIMATED = 40;
+/** zxcvbn: guessed within 10^8 tries that begin with the likeliest. */
+const WEAK = 2;
+/** A shorter local part (as in al@…) stands in too many honest passwords by chance. */
+const LEAST_LOCAL_PART = 4;
+
+let estimator: ZxcvbnFactory | undefined;
+
+export type PasswordProblem =
+	'account.password_short' | 'account.password_long' | 'account.password_common';
+
+/**
+ * What is wrong with a password somebody wants to have, or undefined. There are no rules about kinds
+ * of characters: only the length, and not what everybody, or whoever knows the e-mail address, would
+ * try first.
+ */
+export function passwordProblem(password: string, emailKey: string): PasswordProblem | undefined {
+	const text = password.normalize('NFC');
+	const length = Array.from(text.slice(0, 4 * MOST_PASSWORD)).length;
+	if (length < LEAST) return 'account.password_short';
+	if (length > MOST_PASSWORD) return 'account.password_long';
+
+	const lower = text.toLowerCase();
+	const local = emailKey.slice(0, Math.max(0, emailKey.lastIndexOf('@')));
+	if (lower.includes('tallybar')) return 'account.password_common';
+	if (local.length >= LEAST_LOCAL_PART && lower.includes(local)) return 'account.password_common';
+	// The dictionary takes some megabytes and 50 ms: not before the first person needs it.
+	estimator ??= new ZxcvbnFactory({ dictionary, graphs: adjacencyGraphs });
+	const { score } = estimator.check(text.slice(0, ESTIMATED), [emailKey, local]);
+	return score <= WEAK ? 'account.password_common' : undefined;
+}

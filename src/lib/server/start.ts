@@ -1,0 +1,16 @@
+import { join } from 'node:path';
+import { config } from './config';
+import { closeDb, getDb } from './db';
+import { log } from './log';
+import { migrate } from './migrate';
+import { tallybarProcess, whenDrained } from './process';
+
+/** Everything that must have happened before the first request. What it throws stops the start. */
+export async function start(): Promise<void> {
+	const shared = tallybarProcess();
+	shared.config = config();
+	shared.log = log();
+	const applied = await migrate(getDb(), join(config().dataDir, 'backups'));
+	if (applied.length > 0) log().info({ applied }, 'database brought up to date');
+	whenDrained(closeDb);
+}
