@@ -40,7 +40,7 @@ module.exports = {
 			severity: 'error',
 			from: { path: '^src/lib/(rivet|logbook|example)/', pathNot: '\\.test\\.ts$' },
 			to: {
-				path: '^(\\$app/|\\$env/|node:|(node_modules/)?(svelte|@sveltejs|idb|kysely|better-sqlite3|lucia|pino)(/|$))'
+				path: '^(\\$app/|\\$env/|node:)|(^|node_modules/)(svelte|@sveltejs|idb|kysely|better-sqlite3|lucia|pino)(/|$)'
 			}
 		},
 		{

@@ -1,5 +1,8 @@
+import { resolve } from 'node:path';
 import adapter from '@sveltejs/adapter-node';
 import { vitePreprocess } from '@sveltejs/vite-plugin-svelte';
+
+/** @typedef {{ include: string[], compilerOptions: { paths: Record<string, string[]> } }} Generated */
 
 /** @type {import('@sveltejs/kit').Config} */
 const config = {
@@ -36,18 +39,32 @@ const config = {
 		// Registered by AppUpdate.svelte, which also asks before an update takes over.
 		serviceWorker: { register: false },
 		typescript: {
-			config: (generated) => ({
-				...generated,
-				include: [
-					...generated.include,
-					'../migrations/**/*.ts',
-					'../playwright.config.ts',
-					'../eslint.config.js',
-					'../svelte.config.js'
-				],
-				// Kit leaves the service worker out; it is checked like everything else.
-				exclude: ['../node_modules/**']
-			})
+			config: (/** @type {Record<string, unknown>} */ { ...config }) => {
+				const generated = /** @type {Generated} */ (/** @type {unknown} */ (config));
+				return {
+					...generated,
+					compilerOptions: {
+						...generated.compilerOptions,
+						// Absolute: the dependency rule reads relative ones from another folder, and would not
+						// see what $lib leads to.
+						paths: Object.fromEntries(
+							Object.entries(generated.compilerOptions.paths).map(([alias, targets]) => [
+								alias,
+								targets.map((target) => resolve('.svelte-kit', target))
+							])
+						)
+					},
+					include: [
+						...generated.include,
+						'../migrations/**/*.ts',
+						'../playwright.config.ts',
+						'../eslint.config.js',
+						'../svelte.config.js'
+					],
+					// Kit leaves the service worker out; it is checked like everything else.
+					exclude: ['../node_modules/**']
+				};
+			}
 		}
 	}
 };

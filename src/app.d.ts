@@ -10,6 +10,12 @@ declare global {
 		}
 		interface Locals {
 			requestId: string;
+			/** Who is signed in. */
+			person: import('$lib/server/auth/sessions').SignedIn | null;
+			/** The session, without its token. */
+			session: import('$lib/server/auth/sessions').Session | null;
+			/** What handleError made of something thrown, for the answer under /api. */
+			failure?: import('$lib/logbook/refusals').RefusalCode;
 		}
 	}
 }

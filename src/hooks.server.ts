@@ -1,7 +1,15 @@
-import type { Handle, HandleServerError, ServerInit } from '@sveltejs/kit';
+import type { HandleServerError, ServerInit } from '@sveltejs/kit';
+import { sequence } from '@sveltejs/kit/hooks';
 import { building } from '$app/environment';
+import { refusal } from '$lib/logbook/refusals';
+import { apiErrors, failureCode } from '$lib/server/hooks/api-errors';
+import { guard } from '$lib/server/hooks/guard';
+import { noStore } from '$lib/server/hooks/no-store';
+import { requestId } from '$lib/server/hooks/request-id';
+import { sameOrigin } from '$lib/server/hooks/same-origin';
+import { samePerson } from '$lib/server/hooks/same-person';
+import { session } from '$lib/server/hooks/session';
 import { log } from '$lib/server/log';
-import { tallybarProcess } from '$lib/server/process';
 import { start } from '$lib/server/start';
 
 export const init: ServerInit = async () => {
@@ -9,17 +17,26 @@ export const init: ServerInit = async () => {
 	if (!building) await start();
 };
 
-export const handle: Handle = ({ event, resolve }) => {
-	// The server script gives every request an id, whatever the caller sent.
-	event.locals.requestId = event.request.headers.get('x-request-id') ?? '';
-	const request = event.platform?.req;
-	if (request !== undefined) tallybarProcess().routes.set(request, event.route.id ?? '(no route)');
-	return resolve(event);
-};
+// Outside in: what is nearer to the route may rely on what stands before it.
+export const handle = sequence(
+	requestId,
+	noStore,
+	apiErrors,
+	sameOrigin,
+	session,
+	guard,
+	samePerson
+);
 
-export const handleError: HandleServerError = ({ error, event, status, message }) => {
-	const { requestId } = event.locals;
-	if (status !== 404)
-		log().error({ requestId, route: event.route.id, err: error }, 'request failed');
-	return { message, requestId };
+/** What a person is told of an error nobody foresaw: a sentence and the id to quote, never the error. */
+export const handleError: HandleServerError = ({ error, event, status }) => {
+	const { requestId: id } = event.locals;
+	if (status < 500) {
+		const code = status === 404 ? 'request.no_such_page' : 'request.malformed';
+		return { message: refusal(code).says, requestId: id };
+	}
+	log().error({ requestId: id, route: event.route.id, err: error }, 'request failed');
+	const code = failureCode(error);
+	event.locals.failure = code;
+	return { message: refusal(code).says, requestId: id };
 };

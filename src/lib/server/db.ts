@@ -30,15 +30,15 @@ class ImmediateDriver extends SqliteDriver {
 	override async acquireConnection(): Promise<DatabaseConnection> {
 		const connection = await super.acquireConnection();
 		return {
-			executeQuery: (query: CompiledQuery) => {
+			executeQuery: async <R>(query: CompiledQuery) => {
 				if (this.#begun && !this.#sqlite.inTransaction) {
-					return Promise.reject(new Error('the transaction has already been rolled back'));
+					throw new Error('the transaction has already been rolled back');
 				}
-				return connection.executeQuery(query);
+				return connection.executeQuery<R>(query);
 			},
-			streamQuery: (query: CompiledQuery, chunkSize?: number) =>
-				connection.streamQuery(query, chunkSize)
-		} as DatabaseConnection;
+			streamQuery: <R>(query: CompiledQuery, chunkSize?: number) =>
+				connection.streamQuery<R>(query, chunkSize)
+		};
 	}
 
 	override async beginTransaction(connection: DatabaseConnection): Promise<void> {

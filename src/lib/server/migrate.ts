@@ -44,7 +44,7 @@ export async function migrate(
 	const { error, results = [] } = await migrator.migrateToLatest();
 	if (error !== undefined) {
 		const failed = results.find((result) => result.status === 'Error')?.migrationName;
-		const reason = error instanceof Error ? error.message : String(error);
+		const reason = error instanceof Error ? error.message : 'an unknown error';
 		throw new Error(
 			failed === undefined
 				? `the database cannot be used by this version: ${reason}`
