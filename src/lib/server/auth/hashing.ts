@@ -1,9 +1,8 @@
 import { hash, verify } from '@node-rs/argon2';
+import { readable } from './password-rules';
 
-/** OWASP's first choice of argon2id with one thread. Raising a cost here changes new hashes only. */
+/** OWASP's costs for argon2id, the package's default, with one thread. Raising a cost here changes new hashes only. */
 export const COST = { memoryCost: 19_456, timeCost: 2, parallelism: 1 } as const;
-/** `Algorithm.Argon2id`; the package's const enum cannot be imported with isolated modules. */
-const ARGON2ID = 2;
 
 /**
  * Two hashes at a time keep a core and half of libuv's threads for everybody else; beyond so many in
@@ -45,15 +44,14 @@ async function inTurn<T>(work: () => Promise<T>): Promise<T> {
 }
 
 /**
- * The argon2id hash of a password as a PHC string, each with a salt of its own. The text is brought
- * to NFC, since keyboards differ in how they compose an umlaut; it is neither trimmed nor cut.
+ * The argon2id hash of a password as a PHC string, each with a salt of its own.
  * Throws HashingBusyError.
  */
 export function hashPassword(password: string): Promise<string> {
-	return inTurn(() => hash(password.normalize('NFC'), { ...COST, algorithm: ARGON2ID }));
+	return inTurn(() => hash(readable(password), COST));
 }
 
 /** Whether the password is the one that was hashed. Throws HashingBusyError. */
 export function verifyPassword(passwordHash: string, password: string): Promise<boolean> {
-	return inTurn(() => verify(passwordHash, password.normalize('NFC')));
+	return inTurn(() => verify(passwordHash, readable(password)));
 }

@@ -3,7 +3,7 @@ import { adjacencyGraphs, dictionary } from '@zxcvbn-ts/language-common';
 
 /** Counted in characters as people count them (code points of the NFC form). */
 const LEAST = 10;
-export const MOST_PASSWORD = 200;
+const MOST = 200;
 
 /**
  * The estimate reads so much of a password. It grows with the square of the length, on the thread
@@ -14,6 +14,20 @@ const ESTIMATED = 40;
 const WEAK = 2;
 /** A shorter local part (as in al@…) stands in too many honest passwords by chance. */
 const LEAST_LOCAL_PART = 4;
+
+/**
+ * Bringing text to NFC can cost the square of its length, so what is far too long is cut before. No
+ * text so long is brought below the 200 characters by it.
+ */
+const MOST_READ = 2000;
+
+/**
+ * The password in the form that is compared, hashed and counted: NFC, since keyboards differ in how
+ * they compose an umlaut; not trimmed, and cut only far beyond the longest that can be had.
+ */
+export function readable(password: string): string {
+	return password.slice(0, MOST_READ).normalize('NFC');
+}
 
 let estimator: ZxcvbnFactory | undefined;
 
@@ -26,17 +40,21 @@ export type PasswordProblem =
  * try first.
  */
 export function passwordProblem(password: string, emailKey: string): PasswordProblem | undefined {
-	const text = password.normalize('NFC');
-	const length = Array.from(text.slice(0, 4 * MOST_PASSWORD)).length;
+	const text = readable(password);
+	const { length } = Array.from(text);
 	if (length < LEAST) return 'account.password_short';
-	if (length > MOST_PASSWORD) return 'account.password_long';
+	if (length > MOST) return 'account.password_long';
 
 	const lower = text.toLowerCase();
 	const local = emailKey.slice(0, Math.max(0, emailKey.lastIndexOf('@')));
 	if (lower.includes('tallybar')) return 'account.password_common';
 	if (local.length >= LEAST_LOCAL_PART && lower.includes(local)) return 'account.password_common';
 	// The dictionary takes some megabytes and 50 ms: not before the first person needs it.
-	estimator ??= new ZxcvbnFactory({ dictionary, graphs: adjacencyGraphs });
+	estimator ??= new ZxcvbnFactory({
+		dictionary,
+		graphs: adjacencyGraphs,
+		l33tMaxSubstitutions: 20
+	});
 	const { score } = estimator.check(text.slice(0, ESTIMATED), [emailKey, local]);
 	return score <= WEAK ? 'account.password_common' : undefined;
 }
