@@ -82,11 +82,17 @@ function checkText(text: string, path: string): void {
 }
 
 /**
- * A value made fit to be written: every text in NFC and without lone surrogates, keys whose value is
- * undefined left out. For what people type; never applied to what was received.
+ * A value made fit to be written: every text trimmed, in NFC, with plain line ends and no lone surrogates; keys whose
+ * value is undefined left out. For what people type; never applied to what was received.
  */
 export function tidy(value: unknown): Json {
-	if (typeof value === 'string') return value.toWellFormed().normalize('NFC');
+	if (typeof value === 'string')
+		return value
+			.toWellFormed()
+			.normalize('NFC')
+			.replace(/\r\n?/g, '\n')
+			.replace(/\t/g, ' ')
+			.trim();
 	if (Array.isArray(value)) return value.map(tidy);
 	if (value !== null && typeof value === 'object') {
 		const out: Record<string, Json> = {};
@@ -101,7 +107,7 @@ const encoder = new TextEncoder();
 
 /** UTF-8 bytes of a text. */
 export function utf8(text: string): Uint8Array<ArrayBuffer> {
-	return encoder.encode(text) as Uint8Array<ArrayBuffer>;
+	return encoder.encode(text);
 }
 
 /** SHA-256 of a text's UTF-8 bytes, 43 characters of base64url. Synchronous: it runs inside IndexedDB transactions. */

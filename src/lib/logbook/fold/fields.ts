@@ -48,7 +48,7 @@ export function fieldsOf(
 			isStruck
 		).map((line) => ({ line: line.id, value: values.get(line.id) }));
 		if (heads.length === 0) continue;
-		const texts = new Set(heads.map(({ value }) => JSON.stringify(value) ?? ''));
+		const texts = new Set(heads.map(({ value }) => JSON.stringify(value ?? null)));
 		fields.set(name, { value: heads.at(-1)?.value, heads, differs: texts.size > 1 });
 	}
 	return fields;

@@ -280,31 +280,35 @@ function hasRivet(
 
 // ---- the plan -------------------------------------------------------------------------------------------
 
+const UNPLANNED: SeamPlan = {
+	name: '',
+	pattern: 'row',
+	rows: 1,
+	layout: 'parallel',
+	numbering: 'row_by_row',
+	order: 0,
+	people: 1,
+	sealing: 'dry',
+	closes: false
+};
+const PLAN_KEYS = [
+	...(Object.keys(UNPLANNED) as (keyof SeamPlan)[]),
+	'assembly',
+	'callout',
+	'stack',
+	'perRow',
+	'endOne',
+	'endLast',
+	'method',
+	'note'
+] as const satisfies readonly (keyof SeamPlan)[];
+
 function planOf(fields: ReadonlyMap<string, Field>): SeamPlan {
-	const value = <T>(name: string) => fields.get(name)?.value as T | undefined;
-	const some = <K extends keyof SeamPlan>(name: K) => {
-		const found = value<SeamPlan[K]>(name);
-		return (found === undefined ? {} : { [name]: found }) as Partial<Pick<SeamPlan, K>>;
-	};
-	return {
-		name: value('name') ?? '',
-		...some('assembly'),
-		...some('callout'),
-		...some('stack'),
-		pattern: value('pattern') ?? 'row',
-		rows: value('rows') ?? value<number[]>('perRow')?.length ?? 1,
-		...some('perRow'),
-		layout: value('layout') ?? 'parallel',
-		numbering: value('numbering') ?? 'row_by_row',
-		...some('endOne'),
-		...some('endLast'),
-		order: value('order') ?? 0,
-		people: value('people') ?? 1,
-		sealing: value('sealing') ?? 'dry',
-		closes: value('closes') ?? false,
-		...some('method'),
-		...some('note')
-	};
+	const stated = PLAN_KEYS.map((key) => [key, fields.get(key)?.value] as const).filter(
+		([, value]) => value !== undefined
+	);
+	const plan = { ...UNPLANNED, ...Object.fromEntries(stated) };
+	return plan.perRow ? { ...plan, rows: plan.perRow.length } : plan;
 }
 
 type Place = Pick<Hole, 'key' | 'by' | 'index' | 'number' | 'row'>;

@@ -46,17 +46,19 @@ function keptBy(strike: Line): string | undefined {
 }
 
 /**
- * Lines struck only in each other's favour form a ring; the earliest of each ring stays. A line also struck
- * without naming one to keep, or in favour of a line outside its ring, is truly struck and not in a ring.
+ * Lines struck in each other's favour form a ring; the earliest of each ring stays, of those that nobody also struck
+ * without naming one to keep. Lines that merely lead into a ring, or out of one to a live line, are struck.
  */
 function survivorsOf(
 	against: ReadonlyMap<string, readonly Line[]>,
 	byId: ReadonlyMap<string, Line>
 ): string[] {
 	const favours = new Map<string, string[]>();
+	const plainly = new Set<string>();
 	for (const [target, strikes] of against) {
-		const kept = strikes.map(keptBy);
-		if (kept.every((id) => id !== undefined && byId.has(id))) favours.set(target, kept as string[]);
+		const kept = strikes.map(keptBy).filter((id) => id !== undefined && byId.has(id));
+		if (kept.length < strikes.length) plainly.add(target);
+		if (kept.length) favours.set(target, kept as string[]);
 	}
 	// Whoever favours a line that is not itself in question cannot be in a ring; take those away until none is left.
 	for (let changed = true; changed;) {
@@ -80,6 +82,7 @@ function survivorsOf(
 		if (![...ring].every((id) => back.has(id))) continue;
 		for (const id of ring) settled.add(id);
 		const [earliest] = [...ring]
+			.filter((id) => !plainly.has(id))
 			.map((id) => byId.get(id) as Line)
 			.sort((a, b) => byOrder(a.envelope, b.envelope));
 		if (earliest) survivors.push(earliest.id);
