@@ -1,0 +1,244 @@
+/** Writing lines: the one way anything a person does enters the log. */
+import {
+	readEntry,
+	writeEntry,
+	partOf,
+	type Entry,
+	type Reading,
+	type When
+} from '$lib/logbook/entry';
+import { lineOf, type Line } from '$lib/logbook/fold/line';
+import type { Body, Kind } from '$lib/logbook/kinds';
+import { start } from '$lib/logbook/chain';
+import { wallTime } from './clock';
+import { recount, settled, writing, type Change } from './counting';
+import { DeviceError, nameOf } from './errors';
+import { quiet } from './handle';
+import type { BuildRow, Database, EntryRow, StoreName } from './schema';
+import type { DeviceStore } from './store';
+
+type DraftOf<K extends Kind> = K extends Kind
+	? {
+			/** Made up front with `store.newId()` where another draft refers to it. */
+			readonly id?: string;
+			readonly kind: K;
+			readonly body: Body<K>;
+			readonly seam?: string;
+			readonly assembly?: string;
+			/** The lines it stands on, in any order. */
+			readonly on?: readonly string[];
+			readonly when?: When;
+		}
+	: never;
+/** What a screen says; the store adds who, when, on which device and the number. */
+export type Draft<K extends Kind = Kind> = DraftOf<K>;
+
+type Sound = Extract<Reading, { ok: true }>;
+
+const STORES: StoreName[] = ['builds', 'entries', 'outbox', 'summaries'];
+
+/**
+ * Adds lines to the log of a build and puts them in line for the server, all or none. When it returns they are on the
+ * device's disk (one transaction of durability strict, committed). Their numbers follow each other from the highest
+ * known; the first lines of this device in a build are preceded by its `device.enrolled`. A `build.opened` as first
+ * draft opens the build of its id.
+ *
+ * @returns the entries of the drafts, in their order
+ * @throws DeviceError and nothing is saved: `device.full` without room, `device.store_closed` or `device.store_lost`
+ *   when the browser does not keep it, `build.unknown` for a build not on this device, `build.removed` after leaving it,
+ *   and the code of the first draft that is no valid line
+ */
+export async function appendEntries(
+	store: DeviceStore,
+	build: string,
+	drafts: readonly Draft[]
+): Promise<Entry[]> {
+	if (drafts.length === 0) return [];
+	// Ids are made once, so that a second try after a broken connection cannot write a line twice.
+	const named = drafts.map((draft) => ({ ...draft, id: draft.id ?? store.newId() }));
+	const enrolment = store.newId();
+	const at = wallTime(store.env);
+	const append = (db: Database) => appendOnce(store, db, build, named, enrolment, at);
+	let written: Written;
+	try {
+		written = await store.handle.run(append);
+	} catch (error) {
+		if (error instanceof DeviceError) throw error;
+		const there =
+			nameOf(error) === 'ConstraintError' ? await readBack(store, build, named) : undefined;
+		// The first try was committed although its connection broke before saying so.
+		if (there) return there;
+		throw new DeviceError('device.store_lost', { cause: error });
+	}
+	store.cache.set(build, written.changes - 1, written.changes, written.lines);
+	store.notices.send({ build, parts: written.parts });
+	void store.askToPersist();
+	return written.entries;
+}
+
+interface Written {
+	readonly entries: Entry[];
+	readonly parts: string[];
+	readonly changes: number;
+	readonly lines: ReadonlyMap<string, Line[] | undefined>;
+}
+
+async function appendOnce(
+	store: DeviceStore,
+	db: Database,
+	build: string,
+	drafts: readonly (Draft & { id: string })[],
+	enrolment: string,
+	at: string
+): Promise<Written> {
+	const tx = writing(db, STORES, 'strict');
+	return settled(tx, async () => {
+		const { device, publicKey } = store.keys;
+		const row = (await tx.objectStore('builds').get(build)) ?? openedBy(drafts, build);
+		if (row.removed) throw new DeviceError('build.removed');
+
+		const all: readonly (Draft & { id: string })[] = row.enrolled.includes(device)
+			? drafts
+			: withEnrolment(drafts, {
+					id: enrolment,
+					kind: 'device.enrolled',
+					body: {
+						key: publicKey,
+						...(store.deviceName !== undefined && { name: store.deviceName })
+					}
+				});
+		const entries = tx.objectStore('entries');
+		const outbox = tx.objectStore('outbox');
+		const added = new Map<string, Line[]>();
+		const own: Entry[] = [];
+		for (const draft of all) {
+			const reading = written(draft, { build, n: ++row.maxN, device, author: store.person, at });
+			const { entry } = reading;
+			const part = partOf(entry);
+			quiet(entries.add(placeless(reading)));
+			quiet(
+				outbox.add({
+					build,
+					n: entry.n,
+					id: entry.id,
+					state: 'waiting',
+					tries: 0,
+					at: store.env.now()
+				})
+			);
+			const lines = added.get(part);
+			const line = lineOf(reading) as Line;
+			if (lines) lines.push(line);
+			else added.set(part, [line]);
+			if (entry.id !== enrolment) own.push(entry);
+		}
+
+		const parts = new Map<string, Change | undefined>();
+		for (const [part, lines] of added) {
+			const before = store.cache.get(build, row.changes, part);
+			// The lines of the build itself are many and have no summary: they are read when a screen asks.
+			if (before || part !== '') parts.set(part, before && { before, added: lines });
+		}
+		const lines = await recount(tx, build, parts);
+		row.lines += all.length;
+		row.changes++;
+		if (all !== drafts) row.enrolled.push(device);
+		quiet(tx.objectStore('builds').put(row));
+		return { entries: own, parts: [...added.keys()], changes: row.changes, lines };
+	});
+}
+
+/** A row for a build that begins with this line. */
+function openedBy(drafts: readonly (Draft & { id: string })[], build: string): BuildRow {
+	const first = drafts[0];
+	if (first?.kind !== 'build.opened' || first.id !== build)
+		throw new DeviceError('build.unknown', { detail: 'this build is not on this device' });
+	// Whoever opens a build owns it; the server says the same when it hears of it.
+	return { ...newBuildRow(build, first.body.name), role: 'owner' };
+}
+
+/** A build of which this device has no line yet. */
+export function newBuildRow(build: string, name: string): BuildRow {
+	return {
+		build,
+		name,
+		role: null,
+		history: 1,
+		cursor: { ...start(build), signature: '' },
+		maxN: 0,
+		head: 0,
+		lines: 0,
+		changes: 0,
+		enrolled: [],
+		reoffer: false,
+		removed: false,
+		known: false
+	};
+}
+
+/** The enrolment comes first; only the opening of the build itself comes before it. */
+function withEnrolment(
+	drafts: readonly (Draft & { id: string })[],
+	enrolment: Draft<'device.enrolled'> & { id: string }
+): (Draft & { id: string })[] {
+	const first = drafts[0];
+	return first?.kind === 'build.opened'
+		? [first, enrolment, ...drafts.slice(1)]
+		: [enrolment, ...drafts];
+}
+
+/** @throws DeviceError when the draft is no valid line */
+function written(
+	draft: Draft & { id: string },
+	envelope: Pick<Entry, 'build' | 'n' | 'device' | 'author' | 'at'>
+): Sound {
+	const { id, kind, body, seam, assembly, on, when } = draft;
+	const reading = writeEntry({
+		...envelope,
+		id,
+		kind,
+		v: 1,
+		on: [...new Set(on)].sort(),
+		body,
+		...(seam !== undefined && { seam }),
+		...(assembly !== undefined && { assembly }),
+		...(when !== undefined && { when })
+	} as Entry);
+	if (reading.ok) return reading;
+	throw new DeviceError(reading.code, {
+		detail: 'detail' in reading ? `${kind}: ${reading.detail}` : kind
+	});
+}
+
+/** The row of a sound line that has no place in the server's history yet. */
+export function placeless({ entry, text, hash }: Sound): EntryRow {
+	return {
+		build: entry.build,
+		id: entry.id,
+		part: partOf(entry),
+		n: entry.n,
+		kind: entry.kind,
+		device: entry.device,
+		author: entry.author,
+		text,
+		hash,
+		sound: 1
+	};
+}
+
+async function readBack(
+	store: DeviceStore,
+	build: string,
+	drafts: readonly { readonly id: string }[]
+): Promise<Entry[] | undefined> {
+	const rows = await store.handle.run((db) =>
+		Promise.all(drafts.map(({ id }) => db.get('entries', [build, id])))
+	);
+	const entries: Entry[] = [];
+	for (const row of rows) {
+		const reading = row && readEntry(row.text);
+		if (!reading?.ok || reading.entry.author !== store.person) return undefined;
+		entries.push(reading.entry);
+	}
+	return entries;
+}
