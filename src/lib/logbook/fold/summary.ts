@@ -8,6 +8,8 @@ export interface SeamSummary {
 	readonly seam: string;
 	readonly assembly: string;
 	readonly name: string;
+	/** As planned for the whole seam; ranges may differ. */
+	readonly callout?: string;
 	readonly order: number;
 	readonly people: 1 | 2;
 	readonly closes: boolean;
@@ -58,6 +60,7 @@ export function summarise(seam: Seam): SeamSummary {
 		seam: seam.id,
 		assembly: seam.plan.assembly ?? '',
 		name: seam.plan.name,
+		...(seam.plan.callout !== undefined && { callout: seam.plan.callout }),
 		order: seam.plan.order,
 		people: seam.plan.people,
 		closes: seam.plan.closes,
