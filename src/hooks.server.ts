@@ -5,6 +5,7 @@ import { refusal } from '$lib/logbook/refusals';
 import { apiErrors, failureCode } from '$lib/server/hooks/api-errors';
 import { guard } from '$lib/server/hooks/guard';
 import { noStore } from '$lib/server/hooks/no-store';
+import { plainForms } from '$lib/server/hooks/plain-forms';
 import { requestId } from '$lib/server/hooks/request-id';
 import { sameOrigin } from '$lib/server/hooks/same-origin';
 import { samePerson } from '$lib/server/hooks/same-person';
@@ -23,6 +24,7 @@ export const handle = sequence(
 	noStore,
 	apiErrors,
 	sameOrigin,
+	plainForms,
 	session,
 	guard,
 	samePerson
