@@ -100,6 +100,10 @@ export const REFUSALS = {
 		entry: 'never'
 	},
 	'strike.settles_itself': { says: 'A strike cannot keep the line it strikes.', entry: 'never' },
+	'withdraw.not_possible': {
+		says: 'Only notes, photos, voice recordings and names can be withdrawn. Strike this line instead.',
+		entry: 'never'
+	},
 	'crew.removed': {
 		says: 'You are no longer in the crew of this build. The line is kept here and with the server; the owner can accept it.',
 		entry: 'owner'
@@ -116,6 +120,10 @@ export const REFUSALS = {
 	},
 	'device.other_person': {
 		says: 'This device is enrolled for somebody else. Sign in again on this device.',
+		entry: 'never'
+	},
+	'device.enrolled_before': {
+		says: 'This device is already enrolled with another key. Sign out on it and sign in again, then it gets a new one.',
 		entry: 'never'
 	},
 	// A whole request
@@ -198,6 +206,10 @@ export const REFUSALS = {
 	},
 	'crew.no_account': {
 		says: 'Nobody with this e-mail address has an account here. Ask them to register first.',
+		status: 400
+	},
+	'crew.not_in': {
+		says: 'This person is not in the crew. Load the crew again to see who is.',
 		status: 400
 	},
 	'crew.already_in': { says: 'This person is already in the crew.', status: 400 },

@@ -19,7 +19,13 @@ export const GUARDS: Readonly<Record<string, Guard>> = {
 	'/(desk)/sign-in': 'public',
 	// Also for somebody whose session ran out: signing out must always work.
 	'/(desk)/sign-out': 'public',
-	'/api/session': 'person'
+	'/api/session': 'person',
+	'/api/builds': 'person',
+	'/api/builds/[build]/entries': 'person',
+	'/api/builds/[build]/have': 'person',
+	'/api/builds/[build]/crew': 'person',
+	'/api/builds/[build]/quarantine': 'person',
+	'/api/live': 'person'
 };
 
 /** The guard of a route, or undefined when it is not listed: then nobody may. */

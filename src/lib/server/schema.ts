@@ -1,8 +1,10 @@
+import type { LogTables } from './log/tables';
+
 /**
  * The tables as the code of today sees them, one property per table. A migration never imports
  * this: it runs on the tables as they were. Times are milliseconds since 1970.
  */
-export interface Database {
+export interface Database extends LogTables {
 	person: PersonTable;
 	session: SessionTable;
 	sign_in_try: SignInTryTable;

@@ -1,0 +1,42 @@
+import { sql } from 'kysely';
+import type { BuildsAnswer } from '$lib/logbook/wire';
+import type { z } from 'zod';
+import type { LogServer } from './log-server';
+
+/**
+ * The builds of a person, also those they were removed from: a phone must hear "removed" to stop asking, and may not
+ * take a build that is merely missing for one.
+ */
+export async function myBuilds(
+	{ db }: LogServer,
+	actor: string
+): Promise<z.infer<typeof BuildsAnswer>> {
+	const rows = await db
+		.selectFrom('member')
+		.innerJoin('build', 'build.id', 'member.build')
+		.select(['build.id', 'build.name', 'build.seq', 'member.role', 'member.left'])
+		.select((select) =>
+			select
+				.selectFrom('quarantine')
+				.select(sql<number>`count(*)`.as('count'))
+				.whereRef('quarantine.build', '=', 'build.id')
+				.where('decision', 'is', null)
+				.as('quarantined')
+		)
+		.where('member.person', '=', actor)
+		.orderBy('build.id')
+		.execute();
+	return {
+		builds: rows.map(({ id, name, seq, role, left, quarantined }) =>
+			left === 1
+				? { build: id, name, role: null, removed: true, head: 0 }
+				: {
+						build: id,
+						name,
+						role,
+						head: seq,
+						...(role === 'owner' && { quarantined: quarantined ?? 0 })
+					}
+		)
+	};
+}

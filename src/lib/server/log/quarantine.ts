@@ -1,0 +1,134 @@
+import type { RefusalCode } from '$lib/logbook/refusals';
+import type { PushResult, QuarantinedLine } from '$lib/logbook/wire';
+import { write } from '../write';
+import { Journal } from './journal';
+import type { LogServer } from './log-server';
+import { ownerRefusal } from './membership';
+import { readOffered, referents } from './offered';
+import type { Line } from './offered';
+import { isForOwner, refusedReferent, settle, verdictForOwner } from './verdict';
+
+/** The list is for a person to read; what is left shows when these are decided. */
+const MOST_LISTED = 500;
+
+export interface QuarantineList {
+	lines: QuarantinedLine[];
+}
+export interface DecisionResults {
+	/** One for each id asked about, in that order. */
+	results: PushResult[];
+}
+
+/** The refused lines that wait for the owner's decision, oldest first. */
+export async function listQuarantine(
+	{ db }: LogServer,
+	actor: string,
+	build: string
+): Promise<QuarantineList | RefusalCode> {
+	const member = await db
+		.selectFrom('member')
+		.select(['role', 'left'])
+		.where('build', '=', build)
+		.where('person', '=', actor)
+		.executeTakeFirst();
+	if (member === undefined) return 'build.unknown';
+	if (member.left === 1) return 'build.removed';
+	if (member.role !== 'owner') return 'build.owner_only';
+	const rows = await db
+		.selectFrom('quarantine')
+		.select(['id', 'code', 'text', 'seal', 'carrier', 'received'])
+		.where('build', '=', build)
+		.where('decision', 'is', null)
+		.orderBy('received')
+		.orderBy('id')
+		.limit(MOST_LISTED)
+		.execute();
+	return {
+		lines: rows.map(({ id, code, text, seal, carrier, received }) => ({
+			id,
+			code,
+			text,
+			carrier,
+			at: received,
+			acceptable: isForOwner(code) && text !== null && seal !== null
+		}))
+	};
+}
+
+/** Takes refused lines into the log, or puts them aside for good. Each is decided by itself. */
+export async function decideQuarantine(
+	server: LogServer,
+	actor: string,
+	build: string,
+	{ ids, decision }: { ids: readonly string[]; decision: 'accept' | 'discard' }
+): Promise<DecisionResults | RefusalCode> {
+	const outcome = await write(server.db, async (trx) => {
+		const journal = await Journal.open(trx, build);
+		const refused = ownerRefusal(journal, actor);
+		if (refused !== undefined || journal === undefined) return refused ?? 'build.unknown';
+		await journal.lookUp(ids);
+		const results =
+			decision === 'accept' ? await accept(journal, ids) : discard(journal, ids, actor);
+		await journal.flush();
+		return { results, seq: journal.place.seq };
+	});
+	if (typeof outcome === 'string') return outcome;
+	server.live.headMoved(build, outcome.seq);
+	return { results: ids.map((id) => ({ id, ...(outcome.results.get(id) ?? UNKNOWN) })) };
+}
+
+type Outcome = Omit<PushResult, 'id'>;
+const UNKNOWN: Outcome = { status: 'refused', code: 'quarantine.not_acceptable' };
+
+function discard(journal: Journal, ids: readonly string[], actor: string): Map<string, Outcome> {
+	const results = new Map<string, Outcome>();
+	for (const id of ids) {
+		if (!journal.isQuarantined(id)) {
+			if (journal.find(id)) results.set(id, { status: 'duplicate' });
+			continue;
+		}
+		journal.discard(id, actor);
+		results.set(id, { status: 'discarded' });
+	}
+	return results;
+}
+
+async function accept(journal: Journal, ids: readonly string[]): Promise<Map<string, Outcome>> {
+	const results = new Map<string, Outcome>();
+	const lines: (Line & { id: string; seal: string; carrier: string })[] = [];
+	for (const id of ids) {
+		if (journal.find(id)) results.set(id, { status: 'duplicate' });
+		const kept = journal.quarantined(id);
+		if (!kept || kept.text === null || kept.seal === null || !isForOwner(kept.code)) continue;
+		const line = readOffered(kept.text);
+		if (line.entry && line.hash === kept.hash)
+			lines.push({ ...line, seal: kept.seal, carrier: kept.carrier });
+	}
+	// A line stands on lower n only, so that those accepted together find each other.
+	lines.sort((a, b) => a.entry.n - b.entry.n);
+	await journal.lookUp(lines.flatMap(({ entry }) => referents(entry)));
+	await journal.lookUpDevices(lines.map(({ entry }) => entry.device));
+	const moved = new Set<string>();
+	for (const { carrier, ...line } of lines) {
+		const { id, entry } = line;
+		if (journal.find(id)) continue;
+		const judgement = verdictForOwner(entry, journal);
+		switch (judgement.verdict) {
+			case 'accept':
+				journal.append(line);
+				moved.add(id);
+				results.set(id, { status: 'accepted' });
+				break;
+			case 'hold':
+				journal.hold(line, carrier, judgement.waitsFor);
+				results.set(id, { status: 'held' });
+				break;
+			case 'refuse':
+				results.set(id, { status: 'refused', code: judgement.code });
+				if (refusedReferent(entry, journal) !== null)
+					results.set(id, { status: 'pending', code: 'entry.referent_refused' });
+		}
+	}
+	await settle(journal, moved);
+	return results;
+}

@@ -1,0 +1,100 @@
+import type { Entry } from '$lib/logbook/entry';
+import { judge } from '$lib/logbook/judge';
+import type { Judgement, Log } from '$lib/logbook/judge';
+import type { Kind } from '$lib/logbook/kinds';
+import { mayWrite } from '$lib/logbook/permission';
+import { isRefusalCode, refusal } from '$lib/logbook/refusals';
+import type { RefusalCode } from '$lib/logbook/refusals';
+import { readOffered, referents } from './offered';
+import type { Journal } from './journal';
+
+/** Only what people wrote about people or showed of them can be withdrawn; everything else is struck. */
+const WITHDRAWABLE: ReadonlySet<string> = new Set<Kind>([
+	'note.written',
+	'photo.taken',
+	'voice.recorded',
+	'person.named'
+]);
+
+/** What becomes of a line whose seal was found sound. */
+export function verdict(entry: Entry, log: Log): Judgement {
+	const judgement = judge(entry, log);
+	if (judgement.verdict === 'accept' && entry.kind === 'entry.withdrawn') {
+		const target = log.find(entry.body.entry);
+		if (target && !WITHDRAWABLE.has(target.kind))
+			return { verdict: 'refuse', code: 'withdraw.not_possible' };
+	}
+	return judgement;
+}
+
+/** The refused line a line came to stand on. */
+export function refusedReferent(entry: Entry, log: Log): string | null {
+	return referents(entry).find((id) => !log.find(id) && log.isQuarantined(id)) ?? null;
+}
+
+/**
+ * Judges what the owner takes into the log: who may write what is for the owner to overrule, what a line stands on is
+ * not. A verdict on somebody's work stays an inspector's, whoever accepts it.
+ */
+export function verdictForOwner(entry: Entry, journal: Journal): Judgement {
+	const inspectorsOnly = !mayWrite('owner', entry.kind, entry.v);
+	const author = journal.member(entry.author);
+	return verdict(entry, {
+		role: () => (inspectorsOnly ? author?.role : 'owner'),
+		maxN: Number.MAX_SAFE_INTEGER,
+		find: (id) => journal.find(id),
+		isQuarantined: (id) => journal.isQuarantined(id),
+		enrolledFor: (device) => journal.enrolledFor(device)
+	});
+}
+
+/** May the owner take lines refused with this code into the log? */
+export function isForOwner(code: string): boolean {
+	return isRefusalCode(code) && refusal(code).entry === 'owner';
+}
+
+/** May a line refused with this code be offered again, unchanged, and be accepted? Then nothing is kept of it. */
+export function isForLater(code: RefusalCode): boolean {
+	return refusal(code).entry === 'later';
+}
+
+/**
+ * Judges again what waited for lines that have moved, and what waited for those, until nothing moves: held lines whose
+ * referent was accepted or refused, and lines that followed a refused one into quarantine.
+ */
+export async function settle(journal: Journal, moved: Iterable<string>): Promise<void> {
+	let causes = new Set(moved);
+	while (causes.size > 0) {
+		const waiting = await journal.dependants(causes);
+		causes = new Set();
+		const lines = waiting.flatMap((kept) => {
+			const line = kept.text === null ? undefined : readOffered(kept.text);
+			return line?.entry && kept.seal !== null ? [{ ...line, kept, seal: kept.seal }] : [];
+		});
+		await journal.lookUp(lines.flatMap(({ entry }) => referents(entry)));
+		await journal.lookUpDevices(lines.map(({ entry }) => entry.device));
+		lines.sort((a, b) => a.entry.n - b.entry.n);
+		for (const { kept, ...line } of lines) {
+			const { entry, id } = line;
+			// One that was released by another of this round.
+			if (journal.find(id)) continue;
+			const judgement = verdict(entry, journal);
+			switch (judgement.verdict) {
+				case 'accept':
+					journal.append(line);
+					causes.add(id);
+					break;
+				case 'hold':
+					journal.hold(line, kept.carrier, judgement.waitsFor);
+					break;
+				case 'refuse': {
+					const { code } = judgement;
+					const followed = 'code' in kept && kept.code === code;
+					const stands_on = refusedReferent(entry, journal);
+					journal.quarantine({ ...kept, code, stands_on });
+					if (!followed) causes.add(id);
+				}
+			}
+		}
+	}
+}

@@ -1,0 +1,8 @@
+import { QuarantineDecision } from '$lib/logbook/wire';
+import { answerAsked, answerPosted, NoQuery } from '$lib/server/log/http';
+import { decideQuarantine, listQuarantine } from '$lib/server/log/quarantine';
+import type { RequestHandler } from './$types';
+
+export const GET: RequestHandler = (event) => answerAsked(event, NoQuery, listQuarantine);
+export const POST: RequestHandler = (event) =>
+	answerPosted(event, QuarantineDecision, decideQuarantine);
