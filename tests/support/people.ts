@@ -83,7 +83,7 @@ export function withFields(
 }
 
 /** What begins every build: its first line and the enrolment of the device that opens it. */
-export function openBuild(device: TestDevice, name = 'RV-8 of the tests') {
+export function openBuild(device: TestDevice, name = 'Yarrow of the tests') {
 	const build = makeId();
 	const opened = writeLine(device, build, 'build.opened', { name }, { id: build });
 	return { build, opened, enrolled: enrol(device, build) };
