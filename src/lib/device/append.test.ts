@@ -94,7 +94,7 @@ describe('a line that was saved', () => {
 		await appendEntries(store, build, [driven(seam, 1)]);
 		stop();
 		await appendEntries(store, build, [driven(seam, 2)]);
-		expect(heard).toEqual([{ build, parts: [seam] }]);
+		expect(heard).toEqual([{ build, parts: [seam], appended: true }]);
 	});
 });
 

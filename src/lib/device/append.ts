@@ -71,7 +71,7 @@ export async function appendEntries(
 		throw new DeviceError('device.store_lost', { cause: error });
 	}
 	store.cache.set(build, written.changes - 1, written.changes, written.lines);
-	store.notices.send({ build, parts: written.parts });
+	store.notices.send({ build, parts: written.parts, appended: true });
 	void store.askToPersist();
 	return written.entries;
 }

@@ -7,6 +7,8 @@ const Notice = z.object({
 	build: z.optional(z.string()),
 	/** Seams whose lines changed; '' for the lines that concern none. Empty: only counts or states did. */
 	parts: z.array(z.string()),
+	/** Somebody here wrote lines: there is something to offer. */
+	appended: z.optional(z.boolean()),
 	/** The device of this store is another from now on. */
 	device: z.optional(z.string())
 });
