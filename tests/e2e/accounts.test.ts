@@ -334,6 +334,38 @@ test('a request in the name of somebody else than the session is refused with 40
 		expect(answer.status).toBe(409);
 		expect(await answer.json()).toMatchObject({ code: 'session.other_person' });
 	}
+
+	// The log is never read or written without naming the person.
+	for (const [path, headers, status] of [
+		['/api/builds', { 'x-tallybar-person': ernaId }, 200],
+		['/api/builds', { 'x-tallybar-person': ottoId }, 409],
+		['/api/builds', {}, 400],
+		[`/api/live?person=${ottoId}`, {}, 409],
+		['/api/live', { 'x-tallybar-person': ernaId }, 400]
+	] as [string, Fields, number][]) {
+		expect((await erna.send(path, { headers })).status, path).toBe(status);
+	}
+});
+
+test('while the database cannot be written a page says so under an id, and nothing else', async ({
+	server
+}) => {
+	const erna = await registered(server);
+	const db = new Sqlite(join(server.dataDir, 'tallybar.db'));
+	db.exec('begin immediate');
+	try {
+		const form = { email: 'erna@example.org', password: PASSWORD };
+		const answer = await new Caller(server).post('/sign-in', form);
+		expect(answer.status).toBe(500);
+		const body = await answer.text();
+		expect(body).toContain(answer.headers.get('x-request-id') ?? 'no id');
+		expect(body).not.toMatch(/SQLITE|sqlite|at async|\.js:\d/);
+		expect(await erna.person()).toMatchObject({ name: 'erna' });
+	} finally {
+		db.close();
+	}
+	const after = await erna.post('/sign-in', { email: 'erna@example.org', password: PASSWORD });
+	expect(after.status).toBe(303);
 });
 
 test('guessing ends with 429 and the time to wait, for known and unknown accounts alike', async ({

@@ -7,9 +7,9 @@ import { write } from '../write';
 
 const DAY = 86_400_000;
 /** A session that nobody used for so long is over. */
-export const IDLE = 30 * DAY;
+const IDLE = 30 * DAY;
 /** However much it is used: then the password is asked for again. */
-export const ABSOLUTE = 180 * DAY;
+const ABSOLUTE = 180 * DAY;
 /** Renewed when it was last renewed so long ago: not a write for every request. */
 const RENEW_AFTER = DAY;
 
