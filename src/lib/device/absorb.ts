@@ -209,6 +209,7 @@ export async function absorbResults(
 	outcomes: readonly Outcome[],
 	maxN: number
 ): Promise<void> {
+	if (outcomes.length === 0) return;
 	const now = store.env.now();
 	const told = await store.handle.run(async (db) => {
 		const tx = writing(db, ['builds', 'entries', 'outbox', 'summaries'], 'relaxed');
@@ -223,8 +224,8 @@ export async function absorbResults(
 				// Came back in a pull of another tab meanwhile: that is the last word.
 				if (!entry || (entry.history === row.history && entry.seq !== undefined)) continue;
 				const after = settle(there ?? rowFor(offered, now), result, now);
-				if (there || (after.state !== 'acknowledged' && after.state !== 'held'))
-					quiet(outbox.put(after));
+				// Offered again without a row: the pull that follows brings it, or it is offered once more.
+				if (there || after.state !== 'acknowledged') quiet(outbox.put(after));
 				if (setExcluded(tx, entry, isExcluded(after.state))) changed.set(entry.part, undefined);
 			}
 			const before = row.changes;

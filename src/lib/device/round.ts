@@ -351,6 +351,14 @@ class BuildRound {
 			if (!row?.reoffer || row.removed) return true;
 			const unplaced = await unplacedRows(this.#store, this.#build);
 			const lacking = await this.#lacking(unplaced.map(({ id }) => id));
+			// Neither lacking nor in the history that was followed to its head: the server holds it, or has it since.
+			const held = unplaced.filter(({ id }) => !lacking.has(id));
+			await absorbResults(
+				this.#store,
+				this.#build,
+				held.map((key) => ({ row: key, result: { id: key.id, status: 'held' } })),
+				0
+			);
 			const keys = unplaced
 				.filter(({ id }) => lacking.has(id))
 				.map((key): Key => ({ ...key, parked: false }));

@@ -1,0 +1,345 @@
+import 'fake-indexeddb/auto';
+import { afterAll, beforeAll, beforeEach, describe, expect, test } from 'vitest';
+import { directTransport } from '../../../tests/support/direct-transport';
+import { TestLogServer } from '../../../tests/support/log-server';
+import { appendEntries } from './append';
+import { foldedSeam, linesWithFindings, newestLines, oneLine, outboxRows, summaries } from './read';
+import { syncRound } from './round';
+import { statusOfBuilds } from './loop';
+import type { DeviceStore } from './store';
+import { driven, newDevice, openBuild } from './testing';
+import { Refused, Unreachable, type Transport } from './transport';
+
+let server: TestLogServer;
+let people = 0;
+
+beforeAll(async () => {
+	server = await TestLogServer.make();
+});
+afterAll(() => server.close());
+
+interface Phone {
+	readonly store: DeviceStore;
+	readonly transport: Transport;
+	readonly email: string;
+}
+
+async function phone(person?: { readonly id: string; readonly email: string }): Promise<Phone> {
+	const id = person?.id ?? `01890000-0000-7000-8000-${String(++people).padStart(12, '0')}`;
+	const email = person?.email ?? `person${people}@example.org`;
+	if (!person) await server.addAccount(id, `Person ${people}`, email);
+	return { store: await newDevice(id), transport: directTransport(server, id), email };
+}
+
+const another = ({ store, email }: Phone) => phone({ id: store.person, email });
+
+const round = ({ store, transport }: Phone, options: Parameters<typeof syncRound>[2] = {}) =>
+	syncRound(store, transport, options);
+
+async function admit(owner: Phone, build: string, member: Phone, role: 'builder' | 'follower') {
+	await server.admit(
+		{ author: owner.store.person } as Parameters<TestLogServer['admit']>[0],
+		build,
+		{ email: member.email } as Parameters<TestLogServer['admit']>[2],
+		role
+	);
+}
+
+const texts = async ({ store }: Phone, build: string) =>
+	(await newestLines(store, build, { limit: 10_000 })).map(({ text }) => text).sort();
+const states = async ({ store }: Phone, build: string) =>
+	(await outboxRows(store, build)).map(({ state, code }) => (code ? `${state} ${code}` : state));
+const status = async ({ store }: Phone) => (await statusOfBuilds(store))[0];
+
+describe('two phones and a server', () => {
+	let ada: Phone;
+	let bob: Phone;
+	let build: string;
+	let seam: string;
+	beforeEach(async () => {
+		ada = await phone();
+		bob = await phone();
+		({ build, seam } = await openBuild(ada.store));
+		await round(ada);
+		await admit(ada, build, bob, 'builder');
+		await round(bob);
+	});
+
+	test('what one wrote offline is with the other, once, and nothing waits', async () => {
+		await appendEntries(ada.store, build, [driven(seam, 1, 5)]);
+		await appendEntries(bob.store, build, [driven(seam, 6)]);
+		for (const one of [ada, bob, ada]) expect((await round(one)).outcome).toBe('done');
+		expect(await texts(ada, build)).toEqual(await texts(bob, build));
+		expect(await states(ada, build)).toEqual([]);
+		expect(await status(ada)).toMatchObject({ synced: true, waiting: 0 });
+		expect(await summaries(bob.store, build)).toEqual(await summaries(ada.store, build));
+		expect(await summaries(bob.store, build)).toMatchObject([{ driven: 6 }]);
+		expect(await linesWithFindings(bob.store, build)).toEqual([]);
+	});
+
+	test('a push whose answer was lost is healed by the pull after it', async () => {
+		await appendEntries(ada.store, build, [driven(seam, 1)]);
+		const push: Transport['push'] = async (...call) => {
+			await ada.transport.push(...call);
+			throw new Unreachable('network');
+		};
+		const report = await round({ ...ada, transport: { ...ada.transport, push } });
+		expect(report.builds.get(build)?.fault?.code).toBe('server.unreachable');
+		expect(await states(ada, build)).toEqual(['waiting']);
+		await round(ada);
+		expect(await states(ada, build)).toEqual([]);
+		expect(await summaries(ada.store, build)).toMatchObject([{ driven: 1 }]);
+	});
+
+	test('each line keeps the seal of the device that wrote it', async () => {
+		const [entry] = await appendEntries(ada.store, build, [driven(seam, 1)]);
+		await round(ada);
+		await round(bob);
+		const line = await oneLine(bob.store, build, entry?.id ?? '');
+		expect(line?.seal?.device).toBe(ada.store.device);
+		expect(line?.seal?.hashes).toContain(line?.hash);
+	});
+
+	test('a line that was changed on the way is not taken, and a later round gets the true one', async () => {
+		await appendEntries(ada.store, build, [driven(seam, 1)]);
+		await round(ada);
+		const pull: Transport['pull'] = async (...call) => {
+			const answer = await bob.transport.pull(...call);
+			return {
+				...answer,
+				entries: answer.entries.map((line) => ({
+					...line,
+					...(line.text && { text: line.text.replace('"from":1', '"from":2') })
+				}))
+			};
+		};
+		const before = await texts(bob, build);
+		const report = await round({ ...bob, transport: { ...bob.transport, pull } });
+		expect(report.builds.get(build)?.fault?.code).toBe('history.broken');
+		expect(await texts(bob, build)).toEqual(before);
+		await round(bob);
+		expect(await texts(bob, build)).toEqual(await texts(ada, build));
+	});
+
+	test('a line whose seal does not hold is kept and reported', async () => {
+		const [entry] = await appendEntries(ada.store, build, [driven(seam, 1)]);
+		await round(ada);
+		const pull: Transport['pull'] = async (...call) => {
+			const answer = await bob.transport.pull(...call);
+			const seals = answer.seals.map((seal) => ({ ...seal, signature: 'A'.repeat(86) }));
+			return { ...answer, seals };
+		};
+		await round({ ...bob, transport: { ...bob.transport, pull } });
+		const found = await linesWithFindings(bob.store, build);
+		expect(found.map(({ id, finding }) => ({ id, finding }))).toEqual([
+			{ id: entry?.id, finding: 'seal.broken' }
+		]);
+		expect(await summaries(bob.store, build)).toMatchObject([{ driven: 1 }]);
+	});
+
+	test('a server that cannot be reached leaves everything waiting', async () => {
+		await appendEntries(ada.store, build, [driven(seam, 1)]);
+		const dead = () => Promise.reject(new Unreachable('timeout'));
+		const report = await round({
+			...ada,
+			transport: { ...ada.transport, builds: dead, pull: dead, push: dead }
+		});
+		expect(report).toMatchObject({ outcome: 'offline', fault: { code: 'server.unreachable' } });
+		expect(report.nextDue).toBeDefined();
+		expect(await states(ada, build)).toEqual(['waiting']);
+	});
+
+	test.each([
+		[401, 'session.none', 'signed_out'],
+		[409, 'session.other_person', 'other_person']
+	])('%i %s stops the round as %s', async (code, name, outcome) => {
+		await appendEntries(ada.store, build, [driven(seam, 1)]);
+		const refuse = () => Promise.reject(new Refused(code, name));
+		const report = await round({ ...ada, transport: { ...ada.transport, pull: refuse } });
+		expect(report.outcome).toBe(outcome);
+		expect(await states(ada, build)).toEqual(['waiting']);
+	});
+
+	test('a fault of one build does not stop another', async () => {
+		const second = await openBuild(ada.store);
+		await appendEntries(ada.store, build, [driven(seam, 1)]);
+		const pull: Transport['pull'] = (of, ...rest) =>
+			of === build ? Promise.reject(new Unreachable('timeout')) : ada.transport.pull(of, ...rest);
+		const report = await round({ ...ada, transport: { ...ada.transport, pull } });
+		expect(report.builds.get(build)?.fault?.code).toBe('server.unreachable');
+		expect(report.builds.get(second.build)).toEqual({ atHead: true });
+	});
+
+	test('what a follower may not write is refused, shown, not counted, and counts once the owner takes it', async () => {
+		const finn = await phone();
+		await admit(ada, build, finn, 'follower');
+		await round(finn);
+		const [entry] = await appendEntries(finn.store, build, [driven(seam, 1, 3)]);
+		await round(finn);
+		expect(await states(finn, build)).toEqual(['refused entry.role']);
+		await round(finn, { tryNow: true });
+		expect(await states(finn, build)).toEqual(['pending entry.role']);
+		expect(await summaries(finn.store, build)).toMatchObject([{ driven: 0 }]);
+		expect((await newestLines(finn.store, build, { limit: 1 }))[0]).toMatchObject({
+			id: entry?.id,
+			excluded: true
+		});
+		await ada.transport.decide(build, [entry?.id ?? ''], 'accept');
+		await round(finn, { tryNow: true });
+		expect(await states(finn, build)).toEqual([]);
+		expect(await summaries(finn.store, build)).toMatchObject([{ driven: 3 }]);
+	});
+
+	test('a copied profile is told to become another device, and nothing is lost', async () => {
+		const clone = await phone({ id: ada.store.person, email: ada.email });
+		// The same keys in another store: what a copied profile is.
+		const meta = await ada.store.handle.run(async (db) => ({
+			device: await db.get('meta', 'device'),
+			keys: await db.get('meta', `keys:${ada.store.device}`)
+		}));
+		await clone.store.handle.run(async (db) => {
+			if (meta.device) await db.put('meta', meta.device, 'device');
+			if (meta.keys) await db.put('meta', meta.keys, `keys:${ada.store.device}`);
+		});
+		clone.store.notices.send({ parts: [], device: ada.store.device });
+		await expect.poll(() => clone.store.device).toBe(ada.store.device);
+		await round(ada);
+		await round(clone);
+		await appendEntries(ada.store, build, [driven(seam, 1)]);
+		await appendEntries(clone.store, build, [driven(seam, 2)]);
+		await round(ada);
+		await round(clone);
+		await round(ada);
+		expect(clone.store.device).not.toBe(ada.store.device);
+		await appendEntries(clone.store, build, [driven(seam, 3)]);
+		await round(clone);
+		await round(ada);
+		expect(await summaries(ada.store, build)).toMatchObject([{ driven: 3 }]);
+		expect(await states(clone, build)).toEqual([]);
+	});
+
+	test('a poisonous line is parked, the rest goes on, and it goes out once the server can take it', async () => {
+		const lines = await appendEntries(
+			ada.store,
+			build,
+			Array.from({ length: 20 }, (_, i) => driven(seam, i + 1))
+		);
+		const poison = lines[7]?.id ?? '';
+		let asked = 0;
+		const push: Transport['push'] = (of, request) => {
+			asked++;
+			return request.entries.some((text) => text.includes(`"id":"${poison}"`))
+				? Promise.reject(new Unreachable('server', 500))
+				: ada.transport.push(of, request);
+		};
+		await round({ ...ada, transport: { ...ada.transport, push } });
+		expect(await states(ada, build)).toEqual(['parked request.internal']);
+		expect(asked).toBeLessThan(20);
+		expect(await summaries(ada.store, build)).toMatchObject([{ driven: 20 }]);
+		await round(ada, { tryNow: true });
+		expect(await states(ada, build)).toEqual([]);
+	});
+
+	test('a batch that is too large is halved; a server that is down is not blamed on a line', async () => {
+		await appendEntries(
+			ada.store,
+			build,
+			Array.from({ length: 9 }, (_, i) => driven(seam, i + 1))
+		);
+		const sick: Transport['push'] = () => Promise.reject(new Unreachable('server', 500));
+		await round({ ...ada, transport: { ...ada.transport, push: sick } });
+		expect(new Set(await states(ada, build))).toEqual(new Set(['waiting']));
+		const push: Transport['push'] = (of, request) =>
+			request.entries.length > 3
+				? Promise.reject(new Unreachable('answer', 413))
+				: ada.transport.push(of, request);
+		await round({ ...ada, transport: { ...ada.transport, push } });
+		expect(await states(ada, build)).toEqual([]);
+	});
+
+	test('removed from the crew: read-only, no longer pulled, and what was unsent is kept on both sides', async () => {
+		await appendEntries(bob.store, build, [driven(seam, 2)]);
+		await round(bob);
+		const [entry] = await appendEntries(bob.store, build, [driven(seam, 1)]);
+		const { removeMember } = await import('../../../src/lib/server/log/crew');
+		await removeMember(server, ada.store.person, build, bob.store.person);
+		await round(bob);
+		expect(await states(bob, build)).toEqual(['refused crew.removed']);
+		expect(await status(bob)).toMatchObject({ removed: true, fault: { code: 'build.removed' } });
+		await expect(appendEntries(bob.store, build, [driven(seam, 3)])).rejects.toMatchObject({
+			code: 'build.removed'
+		});
+		const kept = await ada.transport.quarantine(build);
+		expect(kept.map(({ id }) => id)).toEqual([entry?.id]);
+	});
+});
+
+describe('a server restored from a backup', () => {
+	test('gets back every line it lacks, from whoever still has it', async () => {
+		const ada = await phone();
+		const bob = await phone();
+		const { build, seam } = await openBuild(ada.store);
+		await round(ada);
+		await admit(ada, build, bob, 'builder');
+		await round(bob);
+		await server.backUp();
+		await appendEntries(ada.store, build, [driven(seam, 1), driven(seam, 2)]);
+		await round(ada);
+		await appendEntries(bob.store, build, [driven(seam, 3)]);
+		await round(bob);
+		const before = await texts(bob, build);
+		await server.restore();
+		// Ada's phone is gone. What she wrote survives on Bob's.
+		const report = await round(bob);
+		expect(report.builds.get(build)).toEqual({ atHead: true });
+		expect(await status(bob)).toMatchObject({ synced: true, offeredAgain: 0 });
+		const fresh = await another(ada);
+		await round(fresh);
+		expect(await texts(fresh, build)).toEqual(before);
+		expect(await summaries(fresh.store, build)).toMatchObject([{ driven: 3 }]);
+		await round(ada);
+		expect(await status(ada)).toMatchObject({ synced: true });
+		expect(await texts(ada, build)).toEqual(before);
+	});
+
+	test('to before the build began, it begins again with its opening and its crew', async () => {
+		await server.backUp();
+		const ada = await phone();
+		const bob = await phone();
+		const { build, seam } = await openBuild(ada.store);
+		await round(ada);
+		await admit(ada, build, bob, 'builder');
+		await round(bob);
+		await appendEntries(bob.store, build, [driven(seam, 3)]);
+		await round(bob);
+		const before = await texts(bob, build);
+		await server.restore();
+		for (const one of [ada, bob]) await server.addAccount(one.store.person, 'Somebody', one.email);
+		await round(bob);
+		await round(bob);
+		expect(await status(bob)).toMatchObject({ synced: true });
+		await round(ada);
+		expect(await texts(ada, build)).toEqual(before);
+		expect(await states(bob, build)).toEqual([]);
+	});
+});
+
+test('thousands of lines go out in batches and come back in pages, in the same sum', async () => {
+	const ada = await phone();
+	const { build, seam } = await openBuild(ada.store, 1300);
+	for (let from = 1; from <= 1300; from += 260)
+		await appendEntries(
+			ada.store,
+			build,
+			Array.from({ length: 260 }, (_, i) => driven(seam, from + i))
+		);
+	await round(ada);
+	expect(await status(ada)).toMatchObject({ synced: true });
+	const fresh = await another(ada);
+	await round(fresh);
+	expect(
+		(await foldedSeam(fresh.store, build, seam)).holes.every((h) => h.state === 'driven')
+	).toBe(true);
+	const waypoints = await fresh.store.handle.run((db) => db.getAll('waypoints'));
+	expect(waypoints.map(({ seq }) => seq)).toEqual([1000, 1306]);
+}, 60_000);
