@@ -44,6 +44,14 @@ server.on('message', (message) => {
 for (const signal of /** @type {const} */ (['SIGTERM', 'SIGINT', 'SIGHUP'])) {
 	process.on(signal, () => server.kill(signal));
 }
+// Stopped by a signal, npm takes its shell down with it and tells nobody below: then this process has
+// a new parent, and the server would run on unseen.
+if (process.env['npm_lifecycle_event'] !== undefined) {
+	const parent = process.ppid;
+	setInterval(() => {
+		if (process.ppid !== parent) server.kill('SIGTERM');
+	}, 200).unref();
+}
 server.on('exit', (code, signal) => {
 	process.exitCode = code ?? (signal === null ? 0 : 1);
 });
