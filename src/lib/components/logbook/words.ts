@@ -1,0 +1,167 @@
+/** The words of the trade on our screens, for what the log says in codes. */
+import type { Entry, When } from '$lib/logbook/entry';
+import type { Body, Fault, Length, Method, Role } from '$lib/logbook/kinds';
+
+export const FAULT_WORDS: Readonly<Record<Fault, string>> = {
+	under_driven: 'under-driven',
+	over_driven: 'over-driven',
+	tipped: 'tipped',
+	off_centre: 'off-centre',
+	smile: 'smile',
+	gap: 'gap under the head',
+	sheets_apart: 'sheets apart',
+	cracked: 'cracked',
+	bent_over: 'bent over',
+	proud: 'proud',
+	low: 'low',
+	enlarged_hole: 'enlarged hole',
+	edge_short: 'edge short',
+	wrong_rivet: 'wrong rivet',
+	loose: 'loose',
+	other: 'other'
+};
+
+export const METHOD_WORDS: Readonly<Record<Method, string>> = {
+	driven: 'driven',
+	squeezed: 'squeezed',
+	back_riveted: 'back-riveted',
+	pulled: 'pulled',
+	screw: 'screw',
+	bolt: 'bolt',
+	not_recorded: 'method not recorded'
+};
+
+export const FIX_WORDS: Readonly<Record<Body<'defect.fixed'>['action'], string>> = {
+	left_as_is: 'left as is',
+	driven_further: 'driven further',
+	replaced: 'replaced',
+	replaced_oversize: 'replaced, next size up',
+	referred: 'referred'
+};
+
+export const DECISION_WORDS: Readonly<Record<Body<'defect.decided'>['decision'], string>> = {
+	leave: 'leave as is',
+	drive_further: 'drive further',
+	replace: 'replace',
+	replace_oversize: 'replace, next size up',
+	refer: 'refer',
+	no_defect: 'no defect'
+};
+
+export const STRIKE_WORDS: Readonly<Record<Body<'entry.struck'>['reason'], string>> = {
+	undo: 'undo',
+	wrong_holes: 'wrong holes',
+	wrong_seam: 'wrong seam',
+	not_done: 'not done',
+	logged_twice: 'logged twice',
+	other: 'other'
+};
+
+export const ROLE_WORDS: Readonly<Record<Role, string>> = {
+	owner: 'owner',
+	builder: 'builder',
+	inspector: 'Inspector (mechanic or mentor)',
+	follower: 'follower'
+};
+
+/** `[27,28,29,31]` as "27–29, 31". Any order, each once. */
+export function numbersText(numbers: readonly number[]): string {
+	const sorted = [...new Set(numbers)].sort((a, b) => a - b);
+	const ranges: [number, number][] = [];
+	for (const number of sorted) {
+		const last = ranges.at(-1);
+		if (last && number === last[1] + 1) last[1] = number;
+		else ranges.push([number, number]);
+	}
+	return ranges.map(([from, to]) => (from === to ? String(from) : `${from}–${to}`)).join(', ');
+}
+
+/** A part number as stamped: `MS20426AD3-3.5` as "MS20426 AD 3-3.5". What is not one stays as it was read. */
+export function stamped(callout: string): string {
+	const parts = /^(MS|NAS|AN|CR|CCR)(\d+)([A-Z]{1,3})(\d.*)$/.exec(callout);
+	return parts ? `${parts[1]}${parts[2]} ${parts[3]} ${parts[4]}` : callout;
+}
+
+/** The clock on the wall where a line was written: "21:40". */
+export function clock(at: string): string {
+	return at.slice(11, 16);
+}
+
+const MONTHS = [
+	'January',
+	'February',
+	'March',
+	'April',
+	'May',
+	'June',
+	'July',
+	'August',
+	'September',
+	'October',
+	'November',
+	'December'
+];
+const DAYS = ['Sunday', 'Monday', 'Tuesday', 'Wednesday', 'Thursday', 'Friday', 'Saturday'];
+
+/** `2026-03-14` as "Saturday 14 March 2026", `2026-03` as "March 2026". */
+export function dayText(date: string): string {
+	const [year, month, day] = date.split('-').map(Number);
+	if (month === undefined) return String(year);
+	const name = MONTHS[month - 1] ?? '';
+	if (day === undefined) return `${name} ${year}`;
+	const weekday = DAYS[new Date(`${date.slice(0, 10)}T00:00:00Z`).getUTCDay()] ?? '';
+	return `${weekday} ${day} ${name} ${year}`;
+}
+
+/** The time meant, where it is not the time of writing. */
+export function whenText(when: When): string {
+	switch (when.is) {
+		case 'exact':
+			return `late, for ${dayText(when.at.slice(0, 10))} ${clock(when.at)}`;
+		case 'about':
+			return `late, for about ${dayText(when.date)}`;
+		case 'before':
+			return when.source === undefined
+				? 'before this log began'
+				: `before this log began, ${when.source}`;
+	}
+}
+
+/** How far a device's clock may be from the server's before a line says so. */
+const CLOCK_DIFFERS = 10 * 60_000;
+
+/** Was the line received before it was written, by more than ten minutes? Later is no fault: it waited for a network. */
+export function clockAhead(at: string, received: number | undefined): boolean {
+	return received !== undefined && Date.parse(at) - received > CLOCK_DIFFERS;
+}
+
+/** A length in the unit it was typed in. */
+export function lengthText({ nm, unit }: Length): string {
+	if (unit === 'mm') return `${trimmed(nm / 1_000_000, 2)} mm`;
+	if (unit === 'in') return `${trimmed(nm / 25_400_000, 4).replace(/^0/, '')} in`;
+	const sixtyFourths = nm / 396_875;
+	if (!Number.isInteger(sixtyFourths)) return `${trimmed(nm / 25_400_000, 4)} in`;
+	const whole = Math.floor(sixtyFourths / 64);
+	let [over, under] = [sixtyFourths % 64, 64];
+	while (over > 0 && over % 2 === 0) [over, under] = [over / 2, under / 2];
+	const fraction = over > 0 ? `${over}/${under}` : '';
+	return `${[whole > 0 || !fraction ? String(whole) : '', fraction].filter(Boolean).join(' ')} in`;
+}
+
+function trimmed(value: number, digits: number): string {
+	return String(Number(value.toFixed(digits)));
+}
+
+export function found(reading: Entry<'reading.taken'>['body']['found']): string {
+	if (reading.by === 'gauge')
+		return { inside: 'inside by gauge', small: 'too small by gauge', big: 'too big by gauge' }[
+			reading.size
+		];
+	if (reading.by === 'eye') return reading.seated ? 'seated, by eye' : 'not seated, by eye';
+	const sizes = [
+		reading.width && `${lengthText(reading.width)} wide`,
+		reading.height && `${lengthText(reading.height)} high`,
+		reading.uncertainty && `± ${lengthText(reading.uncertainty)}`
+	].filter(Boolean);
+	return `${sizes.join(', ') || 'measured'} by ${reading.by}`;
+}
