@@ -7,7 +7,8 @@ const DESK_PATHS: readonly RegExp[] = [
 	/^\/sign-in$/,
 	/^\/sign-out$/,
 	/^\/register$/,
-	/^\/account(\/|$)/
+	/^\/account(\/|$)/,
+	/^\/builds\/[^/]+\/crew$/
 ];
 
 export function isDeskPath(pathname: string): boolean {

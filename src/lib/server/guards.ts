@@ -15,6 +15,7 @@ export const GUARDS: Readonly<Record<string, Guard>> = {
 	'/readyz': 'public',
 	'/(shop)/builds': 'public',
 	'/(desk)/account': 'person',
+	'/(desk)/builds/[build]/crew': 'person',
 	'/(desk)/register': 'public',
 	'/(desk)/sign-in': 'public',
 	// Also for somebody whose session ran out: signing out must always work.

@@ -16,20 +16,21 @@ export class FormReader {
 		this.#units = units;
 	}
 
-	refuse(field: string, says: string): undefined {
+	/** Notes what is wrong, once for a field. */
+	refuse(field: string, says: string): void {
 		this.errors[field] ??= says;
 	}
 
 	text(field: string, typed: string, most: number): string | undefined {
 		const value = typed.trim();
-		if (value === '') return undefined;
-		return value.length > most
-			? this.refuse(field, `This is ${value.length} characters; at most ${most} fit.`)
-			: value;
+		if (value.length > most)
+			this.refuse(field, `This is ${value.length} characters; at most ${most} fit.`);
+		return value === '' ? undefined : value;
 	}
 
 	required(field: string, typed: string, most: number, says: string): string | undefined {
-		return typed.trim() === '' ? this.refuse(field, says) : this.text(field, typed, most);
+		if (typed.trim() === '') this.refuse(field, says);
+		return this.text(field, typed, most);
 	}
 
 	whole(
@@ -39,18 +40,17 @@ export class FormReader {
 		most: number,
 		says: string
 	): number | undefined {
-		return typed.trim() === ''
-			? this.refuse(field, says)
-			: this.wholeOrNone(field, typed, least, most);
+		if (typed.trim() === '') this.refuse(field, says);
+		return this.wholeOrNone(field, typed, least, most);
 	}
 
 	wholeOrNone(field: string, typed: string, least: number, most: number): number | undefined {
 		const text = typed.trim();
 		if (text === '') return undefined;
 		const value = /^\d{1,10}$/.test(text) ? Number(text) : Number.NaN;
-		return value >= least && value <= most
-			? value
-			: this.refuse(field, `Write a whole number from ${count(least)} to ${count(most)}.`);
+		if (value >= least && value <= most) return value;
+		this.refuse(field, `Write a whole number from ${count(least)} to ${count(most)}.`);
+		return undefined;
 	}
 
 	wholes(field: string, typed: string, least: number, most: number): number[] | undefined {
@@ -63,6 +63,8 @@ export class FormReader {
 	length(field: string, typed: string): Length | undefined {
 		if (typed.trim() === '') return undefined;
 		const read = parseLength(typed, this.#units);
-		return read.ok ? read.length : this.refuse(field, read.says);
+		if (read.ok) return read.length;
+		this.refuse(field, read.says);
+		return undefined;
 	}
 }

@@ -13,7 +13,8 @@ export function emptyAssembly(order: number): AssemblyTyped {
 }
 
 export function assemblyTyped({ fields }: Pick<Assembly, 'fields'>): AssemblyTyped {
-	const text = (name: Input) => String((fields.get(name)?.value as string | number) ?? '');
+	const text = (name: Input) =>
+		String((fields.get(name)?.value as string | number | undefined) ?? '');
 	return {
 		name: text('name'),
 		order: text('order'),

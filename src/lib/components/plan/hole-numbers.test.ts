@@ -1,5 +1,5 @@
 import { describe, expect, it } from 'vitest';
-import { holesNumbered, numbersOf, numbersText, parseNumbers, plannedHoles } from './hole-numbers';
+import { holesNumbered, numbersOf, parseNumbers, plannedHoles } from './hole-numbers';
 
 const says = (text: string) => {
 	const read = parseNumbers(text);
@@ -61,10 +61,7 @@ describe('hole numbers', () => {
 		expect(found.ok && found.holes).toEqual(twins);
 	});
 
-	it('writes runs', () => {
-		expect(numbersText([{ number: 3 }, { number: 1 }, { number: 2 }, { number: 9 }])).toBe(
-			'1–3, 9'
-		);
+	it('writes the numbers of holes named by identity', () => {
 		expect(numbersOf([{ from: 2, to: 3 }], plannedHoles(5, 101))).toBe('102–103');
 	});
 });

@@ -1,6 +1,7 @@
 /** Holes as people write them: by the numbers on the skin. In a line they are named by identity. */
 import type { Holes } from '$lib/logbook/kinds';
 import type { Hole } from '$lib/logbook/fold/seam';
+import { numbersText } from '../logbook/words';
 
 /** What a number may stand for: the identity of a hole. */
 export type Numbered = Pick<Hole, 'by' | 'index' | 'number'>;
@@ -62,25 +63,12 @@ export function plannedHoles(count: number, first: number): Numbered[] {
 	return Array.from({ length: count }, (_, i) => ({ index: i + 1, number: first + i }));
 }
 
-/** `12–18, 20`; holes without a number are left out. */
-export function numbersText(holes: readonly Pick<Hole, 'number'>[]): string {
-	const numbers = [...new Set(holes.flatMap(({ number }) => number ?? []))].sort((a, b) => a - b);
-	const runs: [number, number][] = [];
-	for (const number of numbers) {
-		const last = runs.at(-1);
-		if (last?.[1] === number - 1) last[1] = number;
-		else runs.push([number, number]);
-	}
-	return runs.map(([from, to]) => (from === to ? String(from) : `${from}–${to}`)).join(', ');
-}
-
 /** The numbers of holes named by identity. */
 export function numbersOf(ranges: Holes, holes: readonly Numbered[]): string {
-	return numbersText(
-		holes.filter((hole) =>
-			ranges.some(({ by, from, to }) => by === hole.by && from <= hole.index && hole.index <= to)
-		)
+	const named = holes.filter((hole) =>
+		ranges.some(({ by, from, to }) => by === hole.by && from <= hole.index && hole.index <= to)
 	);
+	return numbersText(named.flatMap(({ number }) => number ?? []));
 }
 
 function refused(says: string): Refused {

@@ -5,7 +5,7 @@
 import * as z from 'zod/mini';
 import type { Field } from '$lib/logbook/fold/fields';
 import { rangesOf, type Seam } from '$lib/logbook/fold/seam';
-import type { Body, Length, Method, Prep, SeamOverride, Sheet } from '$lib/logbook/kinds';
+import type { Body, Length, SeamOverride, Sheet } from '$lib/logbook/kinds';
 import { MOST_HOLES } from '$lib/logbook/scalars';
 import { formatLength } from '$lib/rivet/length';
 import { FormReader, type Errors } from '../frame/form-reader';
@@ -63,11 +63,14 @@ export type RangeTyped = z.output<typeof RangeTyped>;
 /** The form as text, nothing read yet. */
 export type SeamTyped = z.output<typeof SeamTyped>;
 
+type Planned = Body<'seam.planned'>;
+type Stated = Exclude<keyof Planned, 'name' | 'assembly' | 'holes' | 'overrides' | 'points'>;
 /** The fields of the body that a form states; undefined where it was left empty. */
-export type PlanValues = {
-	[K in keyof Omit<Body<'seam.planned'>, 'holes' | 'overrides' | 'points'>]:
-		Body<'seam.planned'>[K] | undefined;
-} & { readonly overrides: ReadonlyMap<string, SeamOverride> };
+export type PlanValues = Readonly<Record<'name' | 'assembly', string>> & {
+	readonly [K in Stated]: Planned[K] | undefined;
+} & {
+	readonly overrides: ReadonlyMap<string, SeamOverride>;
+};
 
 export function emptySeam(assembly: string, order: number): SeamTyped {
 	return {
@@ -128,10 +131,10 @@ export function nextSeam(typed: SeamTyped): SeamTyped {
 /** A planned seam as text, the way it would have been typed. */
 export function typedOf(seam: Seam): SeamTyped {
 	const { fields } = seam;
-	const value = <T>(name: string) => fields.get(name)?.value as T | undefined;
-	const text = (name: string) => String(value<string | number>(name) ?? '');
+	const value = (name: string) => fields.get(name)?.value;
+	const text = (name: string) => String((value(name) as string | number | undefined) ?? '');
 	const length = (name: string) => {
-		const stated = value<Length>(name);
+		const stated = value(name) as Length | undefined;
 		return stated ? formatLength(stated) : '';
 	};
 	const own = seam.holes.filter((hole) => hole.by === undefined && hole.number !== undefined);
@@ -140,16 +143,16 @@ export function typedOf(seam: Seam): SeamTyped {
 		assembly: text('assembly'),
 		order: text('order'),
 		callout: text('callout'),
-		sheets: (value<readonly Sheet[]>('stack') ?? []).map(sheetTyped),
+		sheets: ((value('stack') as readonly Sheet[] | undefined) ?? []).map(sheetTyped),
 		method: text('method'),
 		head: text('head'),
 		count: String(own.length),
 		first: String(own[0]?.number ?? 1),
-		pattern: value<string>('pattern') ?? 'row',
+		pattern: text('pattern') || 'row',
 		rows: text('rows') || '1',
-		perRow: (value<readonly number[]>('perRow') ?? []).join(', '),
-		layout: value<string>('layout') ?? 'parallel',
-		numbering: value<string>('numbering') ?? 'row_by_row',
+		perRow: ((value('perRow') as readonly number[] | undefined) ?? []).join(', '),
+		layout: text('layout') || 'parallel',
+		numbering: text('numbering') || 'row_by_row',
 		pitch: length('pitch'),
 		rowSpacing: length('rowSpacing'),
 		edge: length('edge'),
@@ -159,9 +162,9 @@ export function typedOf(seam: Seam): SeamTyped {
 		sheet: text('sheet'),
 		step: text('step'),
 		revision: text('revision'),
-		people: String(value<number>('people') ?? 1),
-		sealing: value<string>('sealing') ?? 'dry',
-		closes: value<boolean>('closes') ?? false,
+		people: text('people') || '1',
+		sealing: text('sealing') || 'dry',
+		closes: value('closes') === true,
 		note: text('note'),
 		ranges: seam.overrides.map(([id, override]) => ({
 			id,
@@ -244,7 +247,7 @@ export function readSeam(
 		const leaveOpen = read.text(`${at}.leaveOpen`, range.leaveOpen, 200);
 		const note = read.text(`${at}.note`, range.note, 200);
 		const stack = readStack(read, `${at}.`, range.sheets);
-		const method = chosen<Exclude<Method, 'not_recorded'>>(range.method);
+		const method = chosen(range.method, CHOICES.method);
 		overrides.set(range.id, {
 			holes: rangesOf(found.holes),
 			...(callout !== undefined && { callout }),
@@ -261,13 +264,13 @@ export function readSeam(
 		order: read.wholeOrNone('order', typed.order, 0, 1_000_000_000),
 		callout: read.text('callout', typed.callout, 64),
 		stack: readStack(read, '', typed.sheets),
-		method: chosen(typed.method),
-		head: chosen(typed.head),
-		pattern: chosen(typed.pattern),
+		method: chosen(typed.method, CHOICES.method),
+		head: chosen(typed.head, CHOICES.head),
+		pattern: chosen(typed.pattern, CHOICES.pattern),
 		rows,
 		perRow,
-		layout: several ? chosen(typed.layout) : undefined,
-		numbering: several ? chosen(typed.numbering) : undefined,
+		layout: several ? chosen(typed.layout, CHOICES.layout) : undefined,
+		numbering: several ? chosen(typed.numbering, CHOICES.numbering) : undefined,
 		pitch: read.length('pitch', typed.pitch),
 		rowSpacing: several ? read.length('rowSpacing', typed.rowSpacing) : undefined,
 		edge: read.length('edge', typed.edge),
@@ -288,10 +291,18 @@ export function readSeam(
 		: { ok: true, values, holes: { count: count ?? 1, first: first ?? 1 } };
 }
 
-/** What a select says; its values are those of the body, and '' is "not said". */
-function chosen<T extends string>(value: string): T | undefined {
-	return value === '' ? undefined : (value as T);
+/** What a select says; anything else, as '' or what an older app kept, is "not said". */
+function chosen<T extends string>(value: string, of: readonly T[]): T | undefined {
+	return of.find((option) => option === value);
 }
+
+const CHOICES = {
+	method: ['driven', 'squeezed', 'back_riveted', 'pulled', 'screw', 'bolt'],
+	head: ['near', 'far'],
+	pattern: ['row', 'rows', 'free', 'nutplates'],
+	layout: ['parallel', 'staggered'],
+	numbering: ['row_by_row', 'back_and_forth', 'across']
+} as const;
 
 /** Sheets in order from the manufactured head; rows left wholly empty are none. */
 function readStack(
@@ -423,5 +434,3 @@ export function settledBody(field: string, value: unknown): Body<'seam.changed'>
 		overrides: { [field.slice('overrides.'.length)]: (value ?? null) as SeamOverride | null }
 	};
 }
-
-export const PREPS: readonly Prep[] = SheetTyped.shape.prep.options;

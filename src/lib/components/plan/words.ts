@@ -1,0 +1,159 @@
+/** What the plan calls things, and its values in words. */
+import type { Length, Prep, SeamOverride, Sheet } from '$lib/logbook/kinds';
+import { formatLength } from '$lib/rivet/length';
+import { METHOD_WORDS, stamped } from '../logbook/words';
+import { counted } from '../frame/numbers';
+import { numbersOf, type Numbered } from './hole-numbers';
+
+type Options = readonly (readonly [value: string, words: string])[];
+
+export const PREP_OPTIONS: readonly (readonly [Prep, string])[] = [
+	['plain', 'plain'],
+	['dimple', 'dimple'],
+	['countersunk', 'countersunk'],
+	['countersunk_under_dimple', 'countersunk under a dimple'],
+	['double_flush', 'double flush']
+];
+export const METHOD_OPTIONS: Options = [
+	['driven', 'driven'],
+	['squeezed', 'squeezed'],
+	['back_riveted', 'back-riveted'],
+	['pulled', 'pulled (blind)'],
+	['screw', 'screw'],
+	['bolt', 'bolt']
+];
+export const PATTERN_OPTIONS: Options = [
+	['row', 'one row'],
+	['rows', 'several rows'],
+	['free', 'free'],
+	['nutplates', 'nutplates, two rivets each']
+];
+export const LAYOUT_OPTIONS: Options = [
+	['parallel', 'side by side'],
+	['staggered', 'staggered']
+];
+export const NUMBERING_OPTIONS: Options = [
+	['row_by_row', 'row by row, each from end 1'],
+	['back_and_forth', 'back and forth'],
+	['across', 'across the rows']
+];
+export const HEAD_OPTIONS: Options = [
+	['', 'not said'],
+	['near', 'near side'],
+	['far', 'far side']
+];
+
+const FIELD_WORDS: Readonly<Record<string, string>> = {
+	name: 'Name',
+	assembly: 'Assembly',
+	order: 'Order',
+	about: 'What it is',
+	units: 'Units',
+	place: 'Place',
+	outline: 'Outline',
+	callout: 'Rivet',
+	stack: 'Sheets',
+	method: 'Method',
+	head: 'Manufactured head',
+	pattern: 'Pattern',
+	rows: 'Rows',
+	perRow: 'Holes in each row',
+	layout: 'Rows lie',
+	numbering: 'Numbers run',
+	points: 'Places of the holes',
+	pitch: 'Pitch',
+	rowSpacing: 'Row spacing',
+	edge: 'Edge distance',
+	endOne: 'Hole 1 is at',
+	endLast: 'The other end is',
+	drawing: 'Drawing',
+	sheet: 'Sheet',
+	step: 'Step',
+	revision: 'Revision',
+	people: 'People',
+	sealing: 'Wet or dry',
+	closes: 'Closes the structure',
+	note: 'Note'
+};
+
+/** What a field of a plan is called: `callout`, `overrides.<id>`, `steps.<id>`. */
+export function fieldWords(field: string): string {
+	const [map] = field.split('.');
+	if (map === 'overrides') return 'A range that differs';
+	if (map === 'steps') return 'A step';
+	if (map === 'rules') return `Rule ${field.slice('rules.'.length)}`;
+	return FIELD_WORDS[field] ?? field;
+}
+
+export interface ValueNames {
+	assembly(id: string): string;
+	readonly holes: readonly Numbered[];
+}
+
+/** A value of the plan as it is read aloud. */
+export function valueWords(field: string, value: unknown, names: ValueNames): string {
+	if (value === undefined || value === null) return 'empty';
+	const [map] = field.split('.');
+	if (map === 'overrides') return overrideWords(value as SeamOverride, names);
+	if (map === 'steps') return (value as { text: string }).text;
+	switch (field) {
+		case 'assembly':
+			return names.assembly(value as string);
+		case 'callout':
+			return stamped(value as string);
+		case 'stack':
+			return stackWords(value as readonly Sheet[]);
+		case 'pitch':
+		case 'rowSpacing':
+		case 'edge':
+			return formatLength(value as Length);
+		case 'people':
+			return counted(value as number, 'person', 'people');
+		case 'closes':
+			return value === true ? 'yes' : 'no';
+		case 'perRow':
+			return (value as readonly number[]).join(', ');
+		case 'points':
+			return counted((value as readonly number[]).length / 2, 'place');
+		case 'units':
+			return value === 'mm' ? 'millimetres' : 'inches';
+	}
+	const words = OPTIONS_OF[field]?.find(([option]) => option === value)?.[1];
+	return words ?? (typeof value === 'string' ? value : JSON.stringify(value));
+}
+
+const OPTIONS_OF: Readonly<Record<string, Options>> = {
+	method: METHOD_OPTIONS,
+	pattern: PATTERN_OPTIONS,
+	layout: LAYOUT_OPTIONS,
+	numbering: NUMBERING_OPTIONS,
+	head: HEAD_OPTIONS
+};
+
+export function stackWords(stack: readonly Sheet[]): string {
+	return stack
+		.map(({ thickness, material, prep, part }) =>
+			[formatLength(thickness), material, prepWords(prep), part && `(${part})`]
+				.filter(Boolean)
+				.join(' ')
+		)
+		.join(' + ');
+}
+
+function prepWords(prep: Prep): string | undefined {
+	return prep === 'plain' ? undefined : PREP_OPTIONS.find(([option]) => option === prep)?.[1];
+}
+
+function overrideWords(override: SeamOverride, { holes }: ValueNames): string {
+	const { callout, stack, method, leaveOpen, note } = override;
+	return [
+		`holes ${numbersOf(override.holes, holes)}`,
+		callout && stamped(callout),
+		stack && stackWords(stack),
+		method && METHOD_WORDS[method],
+		leaveOpen && `left open: ${leaveOpen}`,
+		note
+	]
+		.filter(Boolean)
+		.join(', ');
+}
