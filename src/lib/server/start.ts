@@ -2,6 +2,7 @@ import { join } from 'node:path';
 import { config } from './config';
 import { closeDb, getDb } from './db';
 import { log } from './log';
+import { getLog } from './log/log-server';
 import { migrate } from './migrate';
 import { tallybarProcess, whenDrained } from './process';
 
@@ -12,5 +13,7 @@ export async function start(): Promise<void> {
 	shared.log = log();
 	const applied = await migrate(getDb(), join(config().dataDir, 'backups'));
 	if (applied.length > 0) log().info({ applied }, 'database brought up to date');
+	// A server whose key cannot be read must not make another: see log/server-key.ts.
+	getLog();
 	whenDrained(closeDb);
 }
