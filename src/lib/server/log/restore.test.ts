@@ -11,7 +11,6 @@ import {
 	sealLines,
 	writeLine
 } from '../../../../tests/support/people';
-import type { TestLine } from '../../../../tests/support/people';
 import { outcomes, TestLogServer } from '../../../../tests/support/log-server';
 import { removeMember } from './crew';
 import { pull } from './pull';
