@@ -65,19 +65,18 @@ export async function readBody<R extends object>(
 ): Promise<R | RefusalCode> {
 	const chunks: Uint8Array[] = [];
 	let length = 0;
-	if (request.body !== null) {
-		const reader = request.body.getReader();
-		for (;;) {
-			const { done, value } = await reader.read();
-			if (done) break;
-			length += value.byteLength;
-			if (length > MOST_PUSHED_BYTES) {
-				void reader.cancel().catch(() => undefined);
-				return 'request.too_large';
-			}
-			chunks.push(value);
+	try {
+		for await (const chunk of request.body ?? []) {
+			length += chunk.byteLength;
+			// The rest is read and dropped, up to the limit of the server script: who is cut off while sending hears
+			// no answer, takes it for a broken network and sends the same again.
+			if (length > MOST_PUSHED_BYTES) chunks.length = 0;
+			else chunks.push(chunk);
 		}
+	} catch {
+		return length > MOST_PUSHED_BYTES ? 'request.too_large' : 'request.malformed';
 	}
+	if (length > MOST_PUSHED_BYTES) return 'request.too_large';
 	try {
 		const text = new TextDecoder('utf-8', { fatal: true }).decode(Buffer.concat(chunks, length));
 		const body = z.safeParse(schema, JSON.parse(text));
