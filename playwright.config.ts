@@ -4,7 +4,8 @@ import { defineConfig } from '@playwright/test';
 const debian = '/usr/bin/chromium';
 
 export default defineConfig({
-	testDir: 'tests/e2e',
+	testDir: 'tests',
+	testMatch: ['e2e/**/*.test.ts', 'faults/**/*.test.ts'],
 	globalSetup: './tests/e2e/global-setup.ts',
 	fullyParallel: true,
 	workers: 2,

@@ -10,7 +10,7 @@ import { requestId } from '$lib/server/hooks/request-id';
 import { sameOrigin } from '$lib/server/hooks/same-origin';
 import { samePerson } from '$lib/server/hooks/same-person';
 import { session } from '$lib/server/hooks/session';
-import { log } from '$lib/server/log';
+import { log } from '$lib/server/logger';
 import { start } from '$lib/server/start';
 
 export const init: ServerInit = async () => {

@@ -4,58 +4,13 @@ import type { AddressInfo } from 'node:net';
 import { join } from 'node:path';
 import type { Page } from '@playwright/test';
 import Sqlite from 'better-sqlite3';
+import { Caller, PASSWORD } from '../support/caller';
 import { expect, test, TestServer } from './server';
 
-const PASSWORD = 'longeron flap gusset';
 const NEW = 'doubler rib nose skin';
 const EVIL = 'http://evil.test';
 
 type Fields = Record<string, string>;
-
-/** A caller without a browser: keeps the session cookie, and sends what it is told to. */
-class Caller {
-	readonly #server: TestServer;
-	readonly #origin: string;
-	cookie = '';
-
-	constructor(server: TestServer, origin = server.url) {
-		this.#server = server;
-		this.#origin = origin;
-	}
-
-	/** Posts a form from our own page; takes over the cookie that comes back. */
-	async post(path: string, fields: Fields, headers: Fields = {}): Promise<Response> {
-		const answer = await this.send(path, {
-			method: 'POST',
-			body: new URLSearchParams(fields),
-			headers: { origin: this.#origin, ...headers }
-		});
-		const [set] = answer.headers.getSetCookie();
-		if (set !== undefined) this.cookie = set.split(';', 1)[0] ?? '';
-		return answer;
-	}
-
-	send(path: string, init: RequestInit = {}): Promise<Response> {
-		const headers = new Headers(init.headers);
-		if (this.cookie !== '') headers.set('cookie', this.cookie);
-		return fetch(this.#server.url + path, { ...init, headers, redirect: 'manual' });
-	}
-
-	async person(): Promise<{ id: string; name: string; email: string } | undefined> {
-		const answer = await this.send('/api/session');
-		if (answer.status !== 200) return undefined;
-		return ((await answer.json()) as { person: { id: string; name: string; email: string } })
-			.person;
-	}
-}
-
-async function registered(server: TestServer, name = 'erna'): Promise<Caller> {
-	const caller = new Caller(server);
-	const email = `${name}@example.org`;
-	const answer = await caller.post('/register', { email, name, password: PASSWORD });
-	expect(answer.status).toBe(303);
-	return caller;
-}
 
 /** Everything the accounts keep, to see that something changed nothing. */
 function dump(server: TestServer): unknown {
@@ -156,7 +111,7 @@ test('with the server gone, a form says so and keeps everything that was typed',
 });
 
 test('a wrong password and an address without account get the same answer', async ({ server }) => {
-	await registered(server);
+	await Caller.registered(server);
 	const answerTo = async (email: string, headers: Fields) => {
 		const answer = await new Caller(server).post('/sign-in', { email, password: 'wrong' }, headers);
 		const kept = [...answer.headers].filter(
@@ -168,7 +123,7 @@ test('a wrong password and an address without account get the same answer', asyn
 		return { status: answer.status, kept, body };
 	};
 	// As a browser sends it without and with JavaScript.
-	for (const headers of [{}, { accept: 'application/json', 'x-sveltekit-action': 'true' }]) {
+	for (const headers of [{}, { accept: 'application/json', 'x-sveltekit-action': 'true' }] as Fields[]) {
 		const known = await answerTo('erna@example.org', headers);
 		expect(known.body).toContain('do not go together');
 		expect(await answerTo('nema@example.org', headers)).toEqual(known);
@@ -200,7 +155,7 @@ const UNSAFE: [path: string, fields: Fields][] = [
 
 for (const [path, fields] of UNSAFE) {
 	test(`${path} takes nothing from another page, whatever its content type`, async ({ server }) => {
-		const caller = await registered(server);
+		const caller = await Caller.registered(server);
 		const before = dump(server);
 		const form = new URLSearchParams(fields).toString();
 		const multipart = new FormData();
@@ -253,7 +208,7 @@ test('a page on another port of this machine, which shares the cookie, cannot si
 	page,
 	server
 }) => {
-	const caller = await registered(server);
+	const caller = await Caller.registered(server);
 	const [name = '', value = ''] = caller.cookie.split('=');
 	await page.context().addCookies([{ name, value, url: server.url, sameSite: 'Lax' }]);
 	const attacker = createServer((_, response) => {
@@ -313,7 +268,7 @@ test('under /api somebody who is signed out gets 401 as JSON, and a wrong addres
 	const nowhere = await nobody.send('/api/no/such/thing');
 	expect(nowhere.status).toBe(404);
 	expect(await nowhere.json()).toMatchObject({ code: 'request.no_such_page' });
-	const erna = await registered(server);
+	const erna = await Caller.registered(server);
 	const put = await erna.send('/api/session', { method: 'PUT', headers: { origin: server.url } });
 	expect(put.status).toBe(405);
 	expect(put.headers.get('allow')).toContain('GET');
@@ -323,8 +278,8 @@ test('under /api somebody who is signed out gets 401 as JSON, and a wrong addres
 test('a request in the name of somebody else than the session is refused with 409', async ({
 	server
 }) => {
-	const erna = await registered(server, 'erna');
-	const otto = await registered(server, 'otto');
+	const erna = await Caller.registered(server, 'erna');
+	const otto = await Caller.registered(server, 'otto');
 	const [ernaId, ottoId] = [(await erna.person())?.id ?? '', (await otto.person())?.id ?? ''];
 	const asks = (person: string) =>
 		erna.send('/api/session', { headers: { 'x-tallybar-person': person } });
@@ -350,7 +305,7 @@ test('a request in the name of somebody else than the session is refused with 40
 test('while the database cannot be written a page says so under an id, and nothing else', async ({
 	server
 }) => {
-	const erna = await registered(server);
+	const erna = await Caller.registered(server);
 	const db = new Sqlite(join(server.dataDir, 'tallybar.db'));
 	db.exec('begin immediate');
 	try {
@@ -371,7 +326,7 @@ test('while the database cannot be written a page says so under an id, and nothi
 test('guessing ends with 429 and the time to wait, for known and unknown accounts alike', async ({
 	server
 }) => {
-	const erna = await registered(server);
+	const erna = await Caller.registered(server);
 	const tryOnce = async (email: string, password: string, number: number) => {
 		const headers = { 'x-forwarded-for': `10.0.0.${number}` };
 		const answer = await new Caller(server).post('/sign-in', { email, password }, headers);
@@ -403,7 +358,7 @@ test('changing the password signs out every other browser and keeps this one', a
 	page,
 	server
 }) => {
-	const other = await registered(server);
+	const other = await Caller.registered(server);
 	await page.goto(`${server.url}/sign-in?next=/account`);
 	await fillIn(page, { 'E-mail address': 'erna@example.org', Password: PASSWORD });
 	await page.getByRole('button', { name: 'Sign in' }).click();
@@ -434,7 +389,7 @@ test('changing the password signs out every other browser and keeps this one', a
 test('signing in gives a new cookie and ends the one sent along; signing out ends it too', async ({
 	server
 }) => {
-	const caller = await registered(server);
+	const caller = await Caller.registered(server);
 	const first = caller.cookie;
 	const signIn = () => caller.post('/sign-in', { email: 'erna@example.org', password: PASSWORD });
 	await signIn();
@@ -464,7 +419,7 @@ test('signing in gives a new cookie and ends the one sent along; signing out end
 test('the token stands in the cookie only: not on the disk, in the log, in a page or an answer', async ({
 	server
 }) => {
-	const caller = await registered(server);
+	const caller = await Caller.registered(server);
 	const token = caller.cookie.split('=')[1] ?? '';
 	expect(token).toMatch(/^[A-Za-z0-9_-]{43}$/);
 	const pages = await Promise.all(

@@ -1,7 +1,7 @@
 import { join } from 'node:path';
 import { config } from './config';
 import { closeDb, getDb } from './db';
-import { log } from './log';
+import { log } from './logger';
 import { getLog } from './log/log-server';
 import { migrate } from './migrate';
 import { tallybarProcess, whenDrained } from './process';

@@ -2,7 +2,7 @@ import { createHash, randomBytes } from 'node:crypto';
 import { Lucia, TimeSpan } from 'lucia';
 import type { Adapter } from 'lucia';
 import type { Db } from '../db';
-import { log } from '../log';
+import { log } from '../logger';
 import { write } from '../write';
 
 const DAY = 86_400_000;

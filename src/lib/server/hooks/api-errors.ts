@@ -2,7 +2,7 @@ import { isHttpError, isRedirect } from '@sveltejs/kit';
 import type { Handle, RequestEvent } from '@sveltejs/kit';
 import type { RefusalCode } from '../../logbook/refusals';
 import { refuse } from '../answer';
-import { log } from '../log';
+import { log } from '../logger';
 import { DiskFullError } from '../write';
 
 /** The refusal for something that was thrown and not foreseen. Logs all but what the caller caused. */

@@ -1,7 +1,7 @@
 import type { Handle } from '@sveltejs/kit';
 import { refuse } from '../answer';
 import { config } from '../config';
-import { log } from '../log';
+import { log } from '../logger';
 
 const SAFE = new Set(['GET', 'HEAD', 'OPTIONS']);
 

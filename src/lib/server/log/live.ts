@@ -6,7 +6,7 @@ import type { z } from 'zod';
 import { sql } from 'kysely';
 import type { LiveMessage } from '$lib/logbook/wire';
 import type { Db } from '../db';
-import { log } from '../log';
+import { log } from '../logger';
 import { whenDraining } from '../process';
 
 /** Another process may write to the same database; what it writes is seen after so long. */

@@ -4,7 +4,7 @@ import { N_LEAP } from '$lib/logbook/judge';
 import type { RefusalCode } from '$lib/logbook/refusals';
 import type { PushAnswer, PushRequest, PushResult } from '$lib/logbook/wire';
 import type { Trx } from '../db';
-import { log as processLog } from '../log';
+import { log as processLog } from '../logger';
 import { DiskFullError, write } from '../write';
 import { Journal } from './journal';
 import type { LogServer } from './log-server';

@@ -4,7 +4,7 @@ import { changePassword } from '$lib/server/auth/accounts';
 import { setSessionCookie } from '$lib/server/auth/cookie';
 import { getDb } from '$lib/server/db';
 import { failed, field } from '$lib/server/desk-form';
-import { log } from '$lib/server/log';
+import { log } from '$lib/server/logger';
 import type { Actions, PageServerLoad } from './$types';
 
 const Fields = z.object({ current: field, password: field });

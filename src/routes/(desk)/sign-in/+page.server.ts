@@ -4,7 +4,7 @@ import { signIn } from '$lib/server/auth/accounts';
 import { readSessionCookie, setSessionCookie } from '$lib/server/auth/cookie';
 import { getDb } from '$lib/server/db';
 import { failed, field } from '$lib/server/desk-form';
-import { log } from '$lib/server/log';
+import { log } from '$lib/server/logger';
 import { nextPage } from '$lib/server/next-page';
 import type { Actions, PageServerLoad } from './$types';
 

@@ -2,7 +2,7 @@ import { redirect } from '@sveltejs/kit';
 import { signOut } from '$lib/server/auth/accounts';
 import { deleteSessionCookie, readSessionCookie } from '$lib/server/auth/cookie';
 import { getDb } from '$lib/server/db';
-import { log } from '$lib/server/log';
+import { log } from '$lib/server/logger';
 import type { Actions, PageServerLoad } from './$types';
 
 export const load: PageServerLoad = ({ locals }) => ({ person: locals.person });
