@@ -13,6 +13,7 @@ const BLOCKED_FOR = 10_000;
 export class Handle<S extends DBSchema> {
 	#opening: Promise<IDBPDatabase<S>> | undefined;
 	#stop: (() => void) | undefined;
+	#disposed = false;
 
 	constructor(
 		readonly name: string,
@@ -64,13 +65,15 @@ export class Handle<S extends DBSchema> {
 		);
 	}
 
-	/** For good. */
+	/** For good: a screen that is going away must not make a deleted store anew. */
 	dispose(): void {
+		this.#disposed = true;
 		this.#stop?.();
 		this.close();
 	}
 
 	#open(): Promise<IDBPDatabase<S>> {
+		if (this.#disposed) return Promise.reject(new DeviceError('device.store_closed'));
 		// Registered before anything is awaited: else each caller of the first moment opens one of its own.
 		if (this.#opening) return this.#opening;
 		const opening: Promise<IDBPDatabase<S>> = this.#connect(() => {

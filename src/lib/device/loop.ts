@@ -76,6 +76,8 @@ export interface LoopEnv {
 	readonly visible: () => boolean;
 	readonly locks: Pick<LockManager, 'request'> | undefined;
 	readonly random: () => number;
+	/** Milliseconds from any start that no clock setting moves: for how long something lasted. */
+	readonly elapsed: () => number;
 }
 
 const APPEND_DEBOUNCE = 30;
@@ -96,7 +98,8 @@ const OF_THE_PAGE: LoopEnv = {
 	visible: () => typeof document === 'undefined' || document.visibilityState === 'visible',
 	locks:
 		typeof navigator === 'undefined' ? undefined : (navigator as { locks?: LockManager }).locks,
-	random: () => Math.random()
+	random: () => Math.random(),
+	elapsed: () => performance.now()
 };
 
 type Timer = ReturnType<typeof setTimeout>;
@@ -199,7 +202,7 @@ export class SyncLoop {
 		if (this.#stopped) return this.#status;
 		this.#tryNow = true;
 		this.#failures = 0;
-		this.#lockWaitedSince ??= this.#store.env.now();
+		this.#lockWaitedSince ??= this.#env.elapsed();
 		const ended = new Promise<void>((resolve) => this.#waitingForRound.push(resolve));
 		this.#wake(0);
 		await ended;
@@ -248,19 +251,19 @@ export class SyncLoop {
 	async #locked(): Promise<number> {
 		const { locks } = this.#env;
 		const since = this.#lockWaitedSince;
-		const patient = since === undefined || this.#store.env.now() - since < LOCK_PATIENCE;
+		const patient = since === undefined || this.#env.elapsed() - since < LOCK_PATIENCE;
 		if (!locks || (!patient && this.#env.visible())) return this.#round();
 		const name = `tallybar.sync.${this.#store.prefix}${this.#store.person}`;
 		return locks.request(name, { ifAvailable: true }, async (lock) => {
 			if (lock) return this.#round();
-			this.#lockWaitedSince ??= this.#store.env.now();
+			this.#lockWaitedSince ??= this.#env.elapsed();
 			return LOCK_BUSY;
 		});
 	}
 
 	async #round(): Promise<number> {
 		this.#lockWaitedSince = undefined;
-		const now = this.#store.env.now();
+		const now = this.#env.elapsed();
 		const everything =
 			this.#everything || this.#tryNow || this.#asked.size === 0 || now - this.#listedAt > LIST_AGE;
 		const only = everything ? undefined : [...this.#asked];
