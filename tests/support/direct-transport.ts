@@ -3,7 +3,7 @@ import { refusal, type RefusalCode } from '../../src/lib/logbook/refusals';
 import { HaveRequest, PushRequest } from '../../src/lib/logbook/wire';
 import { Refused, Unreachable, type Transport } from '../../src/lib/device/transport';
 import { myBuilds } from '../../src/lib/server/log/builds';
-import { readCrew } from '../../src/lib/server/log/crew';
+import { readCrew, removeMember } from '../../src/lib/server/log/crew';
 import type { LogServer } from '../../src/lib/server/log/log-server';
 import { have, pull } from '../../src/lib/server/log/pull';
 import { push } from '../../src/lib/server/log/push';
@@ -39,4 +39,14 @@ export function directTransport(server: LogServer, person: string): Transport {
 			said(await decideQuarantine(server, person, build, { ids: [...ids], decision })).results,
 		live: () => () => undefined
 	};
+}
+
+/** The owner removes somebody from the crew, online. @throws on a refusal */
+export async function removeFromCrew(
+	server: LogServer,
+	owner: string,
+	build: string,
+	person: string
+): Promise<void> {
+	said(await removeMember(server, owner, build, person));
 }

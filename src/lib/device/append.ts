@@ -211,7 +211,7 @@ function written(
 }
 
 /** The row of a sound line that has no place in the server's history yet. */
-export function placeless({ entry, text, hash }: Sound): EntryRow {
+function placeless({ entry, text, hash }: Sound): EntryRow {
 	return {
 		build: entry.build,
 		id: entry.id,

@@ -43,7 +43,7 @@ async function readPart(tx: Writing, build: string, part: string): Promise<Line[
 	return countedLines(await tx.objectStore('entries').index('byPart').getAll(within(build, part)));
 }
 
-export function putSummary(tx: Writing, build: string, seam: string, lines: readonly Line[]): void {
+function putSummary(tx: Writing, build: string, seam: string, lines: readonly Line[]): void {
 	const summary = summarise(foldSeam(seam, lines));
 	quiet(tx.objectStore('summaries').put({ build, seam, fold: summary.fold, summary }));
 }

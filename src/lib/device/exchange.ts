@@ -154,7 +154,7 @@ function chunksByDevice(own: readonly [string, string][]): Map<string, string[]>
 }
 
 /** A line of a file, with the seal in the file that covers it. */
-export interface ImportedLine {
+interface ImportedLine {
 	readonly row: EntryRow;
 	readonly line: Line;
 	readonly seal: Seal;

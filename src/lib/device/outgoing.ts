@@ -27,7 +27,7 @@ const MOST_PROOFS = 20;
 export type Key = Pick<OutboxRow, 'build' | 'n' | 'id'> & { readonly parked: boolean };
 
 /** Is this row's time come? A clock that was set back must not hold a line for years. */
-export function isDue(row: Pick<OutboxRow, 'due'>, now: number): boolean {
+function isDue(row: Pick<OutboxRow, 'due'>, now: number): boolean {
 	return row.due === undefined || row.due <= now || row.due > now + FURTHEST;
 }
 

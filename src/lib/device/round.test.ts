@@ -1,6 +1,6 @@
 import 'fake-indexeddb/auto';
 import { afterAll, beforeAll, beforeEach, describe, expect, test } from 'vitest';
-import { directTransport } from '../../../tests/support/direct-transport';
+import { directTransport, removeFromCrew } from '../../../tests/support/direct-transport';
 import { TestLogServer } from '../../../tests/support/log-server';
 import { appendEntries } from './append';
 import { foldedSeam, linesWithFindings, newestLines, oneLine, outboxRows, summaries } from './read';
@@ -261,8 +261,7 @@ describe('two phones and a server', () => {
 		await appendEntries(bob.store, build, [driven(seam, 2)]);
 		await round(bob);
 		const [entry] = await appendEntries(bob.store, build, [driven(seam, 1)]);
-		const { removeMember } = await import('../../../src/lib/server/log/crew');
-		await removeMember(server, ada.store.person, build, bob.store.person);
+		await removeFromCrew(server, ada.store.person, build, bob.store.person);
 		await round(bob);
 		expect(await states(bob, build)).toEqual(['refused crew.removed']);
 		expect(await status(bob)).toMatchObject({ removed: true, fault: { code: 'build.removed' } });

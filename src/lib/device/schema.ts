@@ -128,7 +128,7 @@ export interface DeviceRow {
 }
 
 /** A place the server signed, in the current history. At most 1000 lines from the next, so proofs fit a message. */
-export interface WaypointRow extends SignedPlace {
+interface WaypointRow extends SignedPlace {
 	readonly build: string;
 	readonly history: number;
 }
@@ -144,7 +144,7 @@ export interface FormerRow {
 	readonly signature: string;
 }
 
-export interface SummaryRow {
+interface SummaryRow {
 	readonly build: string;
 	readonly seam: string;
 	readonly fold: number;
@@ -158,7 +158,7 @@ export interface OwnKeys {
 }
 
 /** What stands in `meta`, by key. `keys:<device>` are kept for ever: lines of an older device may still need a seal. */
-export type Meta =
+type Meta =
 	| { readonly is: 'device'; readonly device: string }
 	| { readonly is: 'keys'; readonly keys: OwnKeys }
 	| { readonly is: 'persisted'; readonly granted: boolean; readonly at: number }

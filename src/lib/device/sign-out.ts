@@ -1,9 +1,9 @@
 /** Leaving a device: what a store still holds, keeping it closed, or deleting it. */
 import { deleteDB } from 'idb';
-import { settled, writing } from './counting';
+import { settled, writing, type Writing } from './counting';
 import { quiet } from './handle';
 import { dismissPerson } from './registry';
-import { ALL_STORES, within, type OutboxState } from './schema';
+import { ALL_STORES, within, type OutboxState, type StoreName, type Transaction } from './schema';
 import { storeName, type DeviceStore } from './store';
 
 /** Lines that would be gone from here with the store and are not in the server's log. */
@@ -34,12 +34,14 @@ const COUNTED_AS: Record<OutboxState, 'waiting' | 'held' | 'refused' | undefined
 /** How many lines of this store are not in the server's log. */
 export async function unsent(store: DeviceStore): Promise<Unsent> {
 	return store.handle.run(async (db) => {
-		const tx = writing(db, ALL_STORES, 'relaxed');
-		return settled(tx, () => count(tx));
+		const tx = db.transaction(ALL_STORES, 'readonly');
+		const counts = await count(tx);
+		await tx.done;
+		return counts;
 	});
 }
 
-async function count(tx: ReturnType<typeof writing>): Promise<Unsent> {
+async function count(tx: Writing | Transaction): Promise<Unsent> {
 	const counts = { waiting: 0, held: 0, refused: 0, offeredAgain: 0 };
 	for (const { state } of await tx.objectStore('outbox').getAll()) {
 		const as = COUNTED_AS[state];

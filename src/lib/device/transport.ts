@@ -48,7 +48,7 @@ export interface Transport {
 	live: (listener: LiveListener) => () => void;
 }
 
-export interface LiveListener {
+interface LiveListener {
 	message: (message: z.output<typeof LiveMessage>) => void;
 	/** The stream ended for good; somebody has to open another. */
 	closed: () => void;

@@ -13,7 +13,7 @@ import { envelopeOf } from './lines';
 import type { BuildRow, DeviceRow, EntryRow, LineFinding, SealRow } from './schema';
 
 /** A line of a page with its place, ready to be stored. */
-export interface CheckedLine {
+interface CheckedLine {
 	readonly row: EntryRow;
 	readonly line: Line | undefined;
 }
