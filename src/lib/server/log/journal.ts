@@ -59,6 +59,8 @@ export class Journal implements Log {
 	/** Withdrawn line → the line that withdrew it. */
 	readonly #withdrawn = new Map<string, string>();
 	readonly #lookedUp = new Set<string>();
+	/** Is anything held, in quarantine or withdrawn? In most builds never: then nobody asks for it line by line. */
+	#hasAside = false;
 
 	readonly #seals = new Map<string, Seal>();
 	readonly #appended: (string | number | null)[][] = [];
@@ -88,9 +90,15 @@ export class Journal implements Log {
 			.set((column) => ({ seq: column.ref('seq') }))
 			.where('id', '=', build)
 			.returning(['seq', 'link', 'max_n', 'name'])
+			.returning(
+				sql<0 | 1>`exists (select 1 from held where build = ${build})
+					or exists (select 1 from quarantine where build = ${build})
+					or exists (select 1 from withdrawn where build = ${build})`.as('aside')
+			)
 			.executeTakeFirst();
 		if (row === undefined) return undefined;
 		const journal = new Journal(trx, build, row, row.max_n, row.name);
+		journal.#hasAside = row.aside === 1;
 		const members = await trx
 			.selectFrom('member')
 			.select(['person', 'role', 'left'])
@@ -147,7 +155,7 @@ export class Journal implements Log {
 				assembly: assembly ?? undefined
 			});
 		}
-		// Almost always nothing: one question for all three.
+		if (!this.#hasAside) return;
 		const { rows } = await sql<{ at: 'held' | 'quarantine' | 'withdrawn'; id: string; by: string }>`
 			select 'held' as at, id, '' as by from held where build = ${this.build} and id in ${list}
 			union all
@@ -172,6 +180,7 @@ export class Journal implements Log {
 
 	/** Held lines and lines in quarantine, whole. What this transaction already changed is not read over. */
 	async #loadAside(by: 'id' | 'cause', ids: readonly string[]): Promise<string[]> {
+		if (!this.#hasAside) return [];
 		const list = listed(ids);
 		const held = await this.#trx
 			.selectFrom('held')
