@@ -221,7 +221,9 @@ async function play(
 /** Schedules of everything that can happen; see the module. */
 export async function runSchedules(share: number, weather: 'ordinary' | 'rare'): Promise<void> {
 	const all = Number(process.env['SCHEDULES'] ?? 200);
-	const seed = process.env['SEED'] === undefined ? undefined : Number(process.env['SEED']);
+	// The same schedules at every `npm test`, so that a failure is of this change; `npm run property:long` tries others.
+	const seed = Number(process.env['SEED'] ?? 20_261_201);
+	console.log(`${Math.ceil(all * share)} schedules of ${weather} mishaps, seed ${seed}`);
 	const roles = fc.array(
 		fc.constantFrom<Exclude<Role, 'owner'>>('builder', 'builder', 'inspector', 'follower'),
 		{ minLength: 2, maxLength: 4 }
@@ -233,7 +235,7 @@ export async function runSchedules(share: number, weather: 'ordinary' | 'rare'):
 	});
 	await fc.assert(fc.asyncProperty(roles, steps, play), {
 		numRuns: Math.ceil(all * share),
-		...(seed !== undefined && { seed }),
+		seed,
 		// Shrinking a long schedule takes minutes; the seed is enough to go on with.
 		...(process.env['SHRINK'] === undefined && { endOnFailure: true })
 	});

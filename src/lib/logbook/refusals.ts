@@ -86,6 +86,10 @@ export const REFUSALS = {
 		says: 'This line stands on one that was not accepted. The owner decides on both.',
 		entry: 'owner'
 	},
+	'entry.waits': {
+		says: 'This line refers to one that has not arrived. It is taken in by itself when that arrives; if that one is lost, the owner can take it in without.',
+		entry: 'owner'
+	},
 	'entry.discarded': {
 		says: 'The owner looked at this line and did not take it into the log. It stays on this device and can be exported.',
 		entry: 'never'

@@ -72,6 +72,45 @@ describe('the quarantine', () => {
 		await server.verifyChain(build);
 	});
 
+	it('shows the owner what has long been held for a line that does not come, and takes it in as it is', async () => {
+		const lost = driveHoles(crew.builder, build, seam, 1);
+		const note = writeLine(crew.builder, build, 'note.written', { text: 'x' }, { seam });
+		const waits = driveHoles(crew.builder, build, seam, 1, 1, { on: [lost.id] });
+		const after = driveHoles(crew.builder, build, seam, 1, 1, { on: [waits.id] });
+		const strike = writeLine(
+			crew.builder,
+			build,
+			'entry.struck',
+			{ entry: lost.id, reason: 'undo' },
+			{ seam }
+		);
+		expect(await server.offer(crew.builder, build, [note, waits, after, strike])).toEqual([
+			'accepted',
+			'held',
+			'held',
+			'held'
+		]);
+		expect(await listed()).toEqual([]);
+		const later = await listQuarantine(server, crew.owner.author, build, Date.now() + 3_600_000);
+		expect(later).toMatchObject({
+			lines: [
+				{ id: waits.id, code: 'entry.waits', text: waits.text, acceptable: true },
+				{ id: after.id, code: 'entry.waits', acceptable: true },
+				{ id: strike.id, code: 'entry.waits', acceptable: false }
+			]
+		});
+		expect(await decide('accept', [strike.id, waits.id])).toEqual(['held', 'accepted']);
+		expect(await server.offer(crew.builder, build, [waits, after])).toEqual([
+			'duplicate',
+			'duplicate'
+		]);
+		expect(await decide('discard', [strike.id])).toEqual(['discarded']);
+		expect(await server.offer(crew.builder, build, [strike])).toEqual(['discarded']);
+		// The lost line turns up after all.
+		expect(await server.offer(crew.builder, build, [lost])).toEqual(['accepted']);
+		await server.verifyChain(build);
+	});
+
 	it('does not accept a line before the one it stands on', async () => {
 		const a = driveHoles(crew.follower, build, seam, 1);
 		const b = driveHoles(crew.follower, build, seam, 1, 1, { on: [a.id] });

@@ -1,3 +1,4 @@
+import type { Entry } from '$lib/logbook/entry';
 import type { RefusalCode } from '$lib/logbook/refusals';
 import type { PushResult, QuarantinedLine } from '$lib/logbook/wire';
 import { write } from '../write';
@@ -19,11 +20,20 @@ export interface DecisionResults {
 	results: PushResult[];
 }
 
-/** The refused lines that wait for the owner's decision, oldest first. */
+/** A held line mostly finds what it refers to within seconds. Past this, in ms, the owner hears of it. */
+const HELD_PATIENCE = 10 * 60_000;
+
+/**
+ * The lines that wait for the owner's decision, oldest first: those refused, and those that have long been held for a
+ * line that does not come, perhaps because the only phone that had it is lost.
+ *
+ * @param now ms since 1970
+ */
 export async function listQuarantine(
 	{ db }: LogServer,
 	actor: string,
-	build: string
+	build: string,
+	now = Date.now()
 ): Promise<QuarantineList | RefusalCode> {
 	const member = await db
 		.selectFrom('member')
@@ -43,16 +53,43 @@ export async function listQuarantine(
 		.orderBy('id')
 		.limit(MOST_LISTED)
 		.execute();
+	const held = await db
+		.selectFrom('held')
+		.select(['id', 'text', 'carrier', 'received'])
+		.where('build', '=', build)
+		.where('received', '<=', now - HELD_PATIENCE)
+		.orderBy('received')
+		.orderBy('id')
+		.limit(MOST_LISTED)
+		.execute();
 	return {
-		lines: rows.map(({ id, code, text, seal, carrier, received }) => ({
-			id,
-			code,
-			text,
-			carrier,
-			at: received,
-			acceptable: isForOwner(code) && text !== null && seal !== null
-		}))
+		lines: [
+			...rows.map(({ id, code, text, seal, carrier, received }) => ({
+				id,
+				code,
+				text,
+				carrier,
+				at: received,
+				acceptable: isForOwner(code) && text !== null && seal !== null
+			})),
+			...held.map(({ id, text, carrier, received }) => ({
+				id,
+				code: 'entry.waits' satisfies RefusalCode,
+				text,
+				carrier,
+				at: received,
+				acceptable: standsAlone(readOffered(text).entry)
+			}))
+		]
 	};
+}
+
+/**
+ * May this line enter the log without what it refers to? A fold bears a cause that is not there. A strike or a
+ * withdrawal does not stand alone: who may strike what is judged by the line struck.
+ */
+function standsAlone(entry: Entry | undefined): boolean {
+	return entry !== undefined && entry.kind !== 'entry.struck' && entry.kind !== 'entry.withdrawn';
 }
 
 /** Takes refused lines into the log, or puts them aside for good. Each is decided by itself. */
@@ -83,6 +120,9 @@ const UNKNOWN: Outcome = { status: 'refused', code: 'quarantine.not_acceptable' 
 function discard(journal: Journal, ids: readonly string[], actor: string): Map<string, Outcome> {
 	const results = new Map<string, Outcome>();
 	for (const id of ids) {
+		const held = journal.held(id);
+		// Kept like any other the owner decided against, so that its device hears of it.
+		if (held && !journal.isQuarantined(id)) journal.quarantine({ ...held, code: 'entry.waits' });
 		if (!journal.isQuarantined(id)) {
 			if (journal.find(id)) results.set(id, { status: 'duplicate' });
 			continue;
@@ -96,9 +136,12 @@ function discard(journal: Journal, ids: readonly string[], actor: string): Map<s
 async function accept(journal: Journal, ids: readonly string[]): Promise<Map<string, Outcome>> {
 	const results = new Map<string, Outcome>();
 	const lines: (Line & { id: string; seal: string; carrier: string })[] = [];
+	const held = new Set<string>();
 	for (const id of ids) {
 		if (journal.find(id)) results.set(id, { status: 'duplicate' });
-		const kept = journal.quarantined(id);
+		const waiting = journal.held(id);
+		if (waiting) held.add(id);
+		const kept = waiting ? { ...waiting, code: 'entry.waits' } : journal.quarantined(id);
 		if (!kept || kept.text === null || kept.seal === null || !isForOwner(kept.code)) continue;
 		const line = readOffered(kept.text);
 		if (line.entry && line.hash === kept.hash)
@@ -120,6 +163,13 @@ async function accept(journal: Journal, ids: readonly string[]): Promise<Map<str
 				results.set(id, { status: 'accepted' });
 				break;
 			case 'hold':
+				// Held already, and the owner takes it as it is.
+				if (held.has(id) && standsAlone(entry)) {
+					journal.append(line);
+					moved.add(id);
+					results.set(id, { status: 'accepted' });
+					break;
+				}
 				journal.hold(line, carrier, judgement.waitsFor);
 				results.set(id, { status: 'held' });
 				break;
