@@ -3,7 +3,7 @@ import { deleteDB } from 'idb';
 import { settled, writing, type Writing } from './counting';
 import { quiet } from './handle';
 import { dismissPerson } from './registry';
-import { ALL_STORES, within, type OutboxState, type StoreName, type Transaction } from './schema';
+import { ALL_STORES, within, type OutboxState, type Transaction } from './schema';
 import { storeName, type DeviceStore } from './store';
 
 /** Lines that would be gone from here with the store and are not in the server's log. */
