@@ -1,13 +1,6 @@
 /** Roles of a build, for people: what each is called and what it may do. */
 import type { Role } from '$lib/logbook/kinds';
 
-export const ROLE_NAMES: Readonly<Record<Role, string>> = {
-	owner: 'Owner',
-	builder: 'Builder',
-	inspector: 'Inspector (mechanic or mentor)',
-	follower: 'Follower'
-};
-
 export const ROLE_MAY: Readonly<Record<Role, string>> = {
 	owner: 'plans, drives, brings in the crew and answers for the log',
 	builder: 'plans, drives and bucks, logs, puts defects right',

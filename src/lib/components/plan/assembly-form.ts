@@ -1,12 +1,28 @@
 /** Between what is typed into the form of an assembly and the lines it becomes. Pure. */
+import * as z from 'zod/mini';
 import type { Assembly } from '$lib/logbook/fold/build';
 import type { Body } from '$lib/logbook/kinds';
 import { FormReader, type Errors } from '../frame/form-reader';
 
-export const ASSEMBLY_INPUTS = ['name', 'order', 'drawing', 'note'] as const;
+const ASSEMBLY_INPUTS = ['name', 'order', 'drawing', 'note'] as const;
 type Input = (typeof ASSEMBLY_INPUTS)[number];
 /** The form as text, nothing read yet. */
 export type AssemblyTyped = Record<Input, string>;
+
+const typedText = z.string().check(z.maxLength(4000));
+const Typed = z.object({ name: typedText, order: typedText, drawing: typedText, note: typedText });
+/** What is kept of a form that is not saved yet. */
+export const AssemblyDraft = z.object({
+	typed: Typed,
+	opened: z.object({ typed: Typed, heads: z.record(z.string(), z.array(z.string())) })
+});
+
+/** Per field the lines that state it: what a change of it stands on. */
+export function assemblyHeads({ fields }: Pick<Assembly, 'fields'>): Record<string, string[]> {
+	return Object.fromEntries(
+		[...fields].map(([name, { heads }]) => [name, heads.map(({ line }) => line)])
+	);
+}
 
 export function emptyAssembly(order: number): AssemblyTyped {
 	return { name: '', order: String(order), drawing: '', note: '' };

@@ -6,8 +6,9 @@ import {
 	changedFields,
 	emptyRange,
 	emptySeam,
+	follow,
 	headsOfFields,
-	movedFields,
+	openedOf,
 	nextSeam,
 	plannedBody,
 	readSeam,
@@ -140,7 +141,7 @@ describe('changing a seam', () => {
 			callout: 'MS20470AD4-5',
 			note: null
 		});
-		expect(headsOfFields(fold().fields, fields)).toEqual([line.id]);
+		expect(headsOfFields(openedOf(fold()), fields)).toEqual([line.id]);
 	});
 
 	it('empties what only several rows have, when one row remains', () => {
@@ -168,14 +169,32 @@ describe('changing a seam', () => {
 		});
 	});
 
-	it('notices what somebody else changed since the form was opened', () => {
-		const { scribe, seam, line, fold } = planned({ callout: 'MS20470AD4-4' });
-		const opened = Object.fromEntries(
-			[...fold().fields.keys()].map((name) => [name, headsOfFields(fold().fields, [name])])
+	it('takes over what others change while the form is open, but not what is being typed', () => {
+		const { scribe, seam, line, fold } = planned({ callout: 'MS20470AD4-4', note: 'deburr' });
+		const opened = openedOf(fold());
+		const mine = { ...opened.typed, callout: 'MS20470AD4-6' };
+		expect(follow(opened, mine, fold())).toEqual({ opened, typed: mine, both: [] });
+
+		const theirs = scribe.write(
+			'seam.changed',
+			{
+				callout: 'MS20470AD4-5',
+				note: 'wet',
+				overrides: { [RANGE]: { holes: [{ from: 3, to: 4 }] } }
+			},
+			{ seam, on: [line] }
 		);
-		expect(movedFields(opened, fold().fields)).toEqual([]);
-		scribe.write('seam.changed', { callout: 'MS20470AD4-5' }, { seam, on: [line] });
-		expect(movedFields(opened, fold().fields)).toEqual(['callout']);
+		const followed = follow(opened, mine, fold());
+		expect(followed.both).toEqual(['callout']);
+		expect(followed.typed).toMatchObject({
+			callout: 'MS20470AD4-6',
+			note: 'wet',
+			ranges: [{ id: RANGE, holes: '3–4' }]
+		});
+		expect(changedFields(followed.opened.typed, followed.typed)).toEqual(['callout']);
+		// It stands on what was seen, not on what came meanwhile: both values will be shown.
+		expect(headsOfFields(followed.opened, ['callout'])).toEqual([line.id]);
+		expect(headsOfFields(followed.opened, ['note'])).toEqual([theirs.id]);
 	});
 
 	it('settles a field stated twice with one line that stands on both', () => {

@@ -3,7 +3,6 @@
  * A new seam is `seam.planned`; a change is `seam.changed` with only the fields that were changed.
  */
 import * as z from 'zod/mini';
-import type { Field } from '$lib/logbook/fold/fields';
 import { rangesOf, type Seam } from '$lib/logbook/fold/seam';
 import type { Body, Length, SeamOverride, Sheet } from '$lib/logbook/kinds';
 import { MOST_HOLES } from '$lib/logbook/scalars';
@@ -60,6 +59,13 @@ export const SeamTyped = z.object({
 });
 export type SheetTyped = z.output<typeof SheetTyped>;
 export type RangeTyped = z.output<typeof RangeTyped>;
+/** What is kept of a form that is not saved yet. */
+export const SeamDraft = z.object({
+	typed: SeamTyped,
+	opened: z.optional(
+		z.object({ typed: SeamTyped, heads: z.record(z.string(), z.array(z.string())) })
+	)
+});
 /** The form as text, nothing read yet. */
 export type SeamTyped = z.output<typeof SeamTyped>;
 
@@ -407,24 +413,69 @@ export function changedBody(
 	};
 }
 
-/** The lines that state these fields now: what a change of them stands on. */
+/** The lines that stated these fields when the form was opened: what a change of them stands on. */
 export function headsOfFields(
-	fields: ReadonlyMap<string, Field>,
+	{ heads }: Pick<Opened, 'heads'>,
 	names: readonly string[]
 ): string[] {
-	return [
-		...new Set(names.flatMap((name) => fields.get(name)?.heads.map(({ line }) => line) ?? []))
-	].sort();
+	return [...new Set(names.flatMap((name) => heads[name] ?? []))].sort();
 }
 
-/** Fields whose value came to be another since the form was opened. */
-export function movedFields(
-	opened: Readonly<Record<string, readonly string[]>>,
-	fields: ReadonlyMap<string, Field>
-): string[] {
-	return [...fields.keys()].filter(
-		(name) => !alike(opened[name] ?? [], headsOfFields(fields, [name]))
+/** A form as it was opened: its text, and per field the lines that stated it then. */
+export interface Opened {
+	readonly typed: SeamTyped;
+	readonly heads: Readonly<Record<string, readonly string[]>>;
+}
+
+export function openedOf(seam: Seam): Opened {
+	const heads = [...seam.fields].map(([name, field]) => [
+		name,
+		field.heads.map(({ line }) => line)
+	]);
+	return { typed: typedOf(seam), heads: Object.fromEntries(heads) as Opened['heads'] };
+}
+
+/**
+ * Takes over what others changed while the form was open, but never what is being typed: a field changed on both sides
+ * stays as typed and stands in `both`. Saved, it stands on what this person saw, so both values are shown.
+ */
+export function follow(
+	opened: Opened,
+	typed: SeamTyped,
+	seam: Seam
+): { readonly opened: Opened; readonly typed: SeamTyped; readonly both: readonly string[] } {
+	const now = openedOf(seam);
+	const names = new Set([...Object.keys(opened.heads), ...Object.keys(now.heads)]);
+	const moved = [...names].filter((name) => !alike(opened.heads[name], now.heads[name]));
+	const mine = new Set(changedFields(opened.typed, typed));
+	const both = moved.filter((name) => mine.has(name));
+	const theirs = moved.filter((name) => !mine.has(name));
+	if (theirs.length === 0) return { opened, typed, both };
+	const heads = Object.fromEntries(
+		[...names].map((name) => [name, (both.includes(name) ? opened : now).heads[name] ?? []])
 	);
+	return {
+		opened: { typed: overlaid(opened.typed, now.typed, theirs), heads },
+		typed: overlaid(typed, now.typed, theirs),
+		both
+	};
+}
+
+/** `typed` with the inputs of some fields as they are in `from`. */
+function overlaid(typed: SeamTyped, from: SeamTyped, fields: readonly string[]): SeamTyped {
+	let result = typed;
+	for (const field of fields) {
+		if (field.startsWith('overrides.')) {
+			const id = field.slice('overrides.'.length);
+			const theirs = from.ranges.filter((range) => range.id === id);
+			const ranges = [...result.ranges.filter((range) => range.id !== id), ...theirs];
+			result = { ...result, ranges: ranges.sort((a, b) => (a.id < b.id ? -1 : 1)) };
+			continue;
+		}
+		const input = field === 'stack' ? 'sheets' : (field as keyof SeamTyped);
+		if (input in from) result = { ...result, [input]: from[input] };
+	}
+	return result;
 }
 
 /** A line that settles a field stated twice: the value of one head, standing on all of them. */
