@@ -122,6 +122,10 @@ export const REFUSALS = {
 		says: 'The device that wrote this line has not been enrolled in this build yet. The line waits until it is.',
 		entry: 'later'
 	},
+	'device.carried': {
+		says: 'Somebody else brought this line, and the device that wrote it is new to the server. The owner can take it in after asking its author.',
+		entry: 'owner'
+	},
 	'device.other_person': {
 		says: 'This device is enrolled for somebody else. Sign in again on this device.',
 		entry: 'never'

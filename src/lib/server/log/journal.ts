@@ -16,6 +16,7 @@ import type { RefusalCode } from '$lib/logbook/refusals';
 import { sealName } from '$lib/logbook/seal';
 import type { Seal } from '$lib/logbook/seal';
 import type { Trx } from '../db';
+import { readOffered } from './offered';
 import type { Line } from './offered';
 import type { LogTables } from './tables';
 
@@ -37,6 +38,9 @@ export type QuarantinedLine = Omit<LogTables['quarantine'], 'build'>;
 export interface SealedLine extends Line {
 	readonly seal: string;
 }
+
+/** Column of `quarantine` that is asked. */
+const ASIDE_BY = { id: 'id', cause: 'stands_on', code: 'code' } as const;
 
 /** One list of ids as one parameter: the SQL stays the same however many there are. */
 const listed = (values: Iterable<string | number>) =>
@@ -176,17 +180,33 @@ export class Journal implements Log {
 			.where('device', 'in', listed(new Set(devices)))
 			.execute();
 		for (const { device, ...row } of rows) this.#devices.set(device, row);
+		const unknown = [...new Set(devices)].some((device) => !this.#devices.has(device));
+		if (unknown) await this.lookUp(await this.#loadAside('code', ['device.carried']));
+	}
+
+	/**
+	 * A device whose enrolment somebody else brought: it waits for the owner, or was discarded. Its lines share its
+	 * fate.
+	 */
+	carriedDevice(device: string): { readonly line: string; readonly key: string } | undefined {
+		for (const { id, code, text } of this.#quarantine.values()) {
+			if (code !== 'device.carried' || text === null) continue;
+			const { entry } = readOffered(text);
+			if (entry?.kind === 'device.enrolled' && entry.device === device)
+				return { line: id, key: entry.body.key };
+		}
+		return undefined;
 	}
 
 	/** Held lines and lines in quarantine, whole. What this transaction already changed is not read over. */
-	async #loadAside(by: 'id' | 'cause', ids: readonly string[]): Promise<string[]> {
+	async #loadAside(by: 'id' | 'cause' | 'code', ids: readonly string[]): Promise<string[]> {
 		if (!this.#hasAside) return [];
 		const list = listed(ids);
 		const held = await this.#trx
 			.selectFrom('held')
 			.select(['id', 'hash', 'text', 'seal', 'carrier', 'waits_for', 'received'])
 			.where('build', '=', this.build)
-			.where(by === 'id' ? 'id' : 'waits_for', 'in', list)
+			.where(by === 'id' ? 'id' : 'waits_for', 'in', by === 'code' ? listed([]) : list)
 			.execute();
 		for (const line of held) if (!this.#changed.held.has(line.id)) this.#held.set(line.id, line);
 		const quarantined = await this.#trx
@@ -205,7 +225,7 @@ export class Journal implements Log {
 				'decided_at'
 			])
 			.where('build', '=', this.build)
-			.where(by === 'id' ? 'id' : 'stands_on', 'in', list)
+			.where(ASIDE_BY[by], 'in', list)
 			.execute();
 		for (const line of quarantined)
 			if (!this.#changed.quarantine.has(line.id)) this.#quarantine.set(line.id, line);

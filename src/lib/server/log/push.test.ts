@@ -18,6 +18,7 @@ import type { TestDevice, TestLine } from '../../../../tests/support/people';
 import { outcomes, TestLogServer } from '../../../../tests/support/log-server';
 import { removeMember } from './crew';
 import { push } from './push';
+import { decideQuarantine } from './quarantine';
 
 let server: TestLogServer;
 beforeAll(async () => {
@@ -237,11 +238,37 @@ describe('one bad line', () => {
 		]);
 	});
 
-	it('that enrols a device for another person waits: a key enters in its own person’s session', async () => {
+	it('that enrols a device for another person is for the owner: a key enters in its own person’s session', async () => {
 		const forged = await makeDevice(crew.owner.author);
 		const line = enrol(forged, build);
 		const seals = [await sealLines(forged, build, [line])];
-		expect(await amongGood(line, { seals })).toBe('refused device.unknown');
+		expect(await amongGood(line, { seals })).toBe('refused device.carried');
+	});
+
+	it('of a device somebody else brought goes the way of its enrolment, in whichever push it comes', async () => {
+		// Bea's second phone never reached the server and is lost; Ines has its lines from a file.
+		const phone = { ...(await makeDevice(builder.author)), n: builder.n };
+		const [first, a, b] = [
+			enrol(phone, build),
+			driveHoles(phone, build, seam, 3),
+			driveHoles(phone, build, seam, 4)
+		];
+		const seals = [await sealLines(phone, build, [first, a, b])];
+		const { inspector, owner } = crew;
+		expect(await server.offer(inspector, build, [first, a], { seals })).toEqual([
+			'refused device.carried',
+			'refused entry.referent_refused'
+		]);
+		expect(await server.offer(inspector, build, [b], { seals })).toEqual([
+			'refused entry.referent_refused'
+		]);
+		await decideQuarantine(server, owner.author, build, { ids: [first.id], decision: 'accept' });
+		expect(await server.offer(inspector, build, [first, a, b], { seals })).toEqual([
+			'duplicate',
+			'duplicate',
+			'duplicate'
+		]);
+		await server.verifyChain(build);
 	});
 
 	it('that gives an enrolled device another key is refused by name', async () => {

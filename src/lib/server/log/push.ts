@@ -279,7 +279,10 @@ class Taking {
 	/** Name of a sound seal over this line, or why there is none. */
 	#sealFor(line: Line): string {
 		const { entry, hash } = line;
-		const key = this.#journal.device(entry.device)?.key ?? this.#batch.keyOf(entry.device);
+		const key =
+			this.#journal.device(entry.device)?.key ??
+			this.#batch.keyOf(entry.device) ??
+			this.#journal.carriedDevice(entry.device)?.key;
 		if (key === undefined) return 'device.unknown';
 		const seal = this.#batch.sealOf(line, key);
 		if (seal) return this.#journal.keepSeal(seal);
@@ -291,14 +294,15 @@ class Taking {
 
 	/**
 	 * Why this device may not be enrolled by this line. A key enters the log in the session of the person it is to
-	 * speak for, and is the only one of its device, here and in every other build.
+	 * speak for, or when the owner says so, and is the only one of its device, here and in every other build.
 	 */
 	async #enrolmentRefusal({ entry }: Line): Promise<RefusalCode | undefined> {
 		if (entry.kind !== 'device.enrolled') return undefined;
 		const device = { person: entry.author, key: entry.body.key };
 		const enrolled = this.#journal.device(entry.device);
 		if (enrolled) return enrolled.key === device.key ? undefined : 'device.enrolled_before';
-		if (entry.author !== this.#actor) return 'device.unknown';
+		if (entry.author !== this.#actor)
+			return this.#journal.member(entry.author) ? 'device.carried' : undefined;
 		return (await this.#journal.isEnrolledOtherwise(entry.device, device))
 			? 'device.enrolled_before'
 			: undefined;

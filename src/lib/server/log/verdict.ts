@@ -16,9 +16,17 @@ const WITHDRAWABLE: ReadonlySet<string> = new Set<Kind>([
 	'person.named'
 ]);
 
+/** A log that also knows enrolments which wait for the owner, because somebody else brought them. */
+type WaitingLog = Log & Pick<Journal, 'carriedDevice'>;
+
 /** What becomes of a line whose seal was found sound. */
-export function verdict(entry: Entry, log: Log): Judgement {
+export function verdict(entry: Entry, log: WaitingLog): Judgement {
 	const judgement = judge(entry, log);
+	// It shares the fate of its device's enrolment, instead of waiting for it out of everybody's sight.
+	if (judgement.verdict === 'refuse' && judgement.code === 'device.unknown')
+		return log.carriedDevice(entry.device)
+			? { verdict: 'refuse', code: 'entry.referent_refused' }
+			: judgement;
 	if (judgement.verdict === 'accept' && entry.kind === 'entry.withdrawn') {
 		const target = log.find(entry.body.entry);
 		if (target && !WITHDRAWABLE.has(target.kind))
@@ -27,8 +35,13 @@ export function verdict(entry: Entry, log: Log): Judgement {
 	return judgement;
 }
 
-/** The refused line a line came to stand on. */
-export function refusedReferent(entry: Entry, log: Log): string | null {
+/** The refused line a line came to stand on: one it refers to, or the enrolment of its device. */
+export function refusedReferent(entry: Entry, log: WaitingLog): string | null {
+	const enrolled = log.enrolledFor(entry.device) !== undefined;
+	if (!enrolled && entry.kind !== 'device.enrolled') {
+		const carried = log.carriedDevice(entry.device);
+		if (carried) return carried.line;
+	}
 	return referents(entry).find((id) => !log.find(id) && log.isQuarantined(id)) ?? null;
 }
 
@@ -44,7 +57,8 @@ export function verdictForOwner(entry: Entry, journal: Journal): Judgement {
 		maxN: Number.MAX_SAFE_INTEGER,
 		find: (id) => journal.find(id),
 		isQuarantined: (id) => journal.isQuarantined(id),
-		enrolledFor: (device) => journal.enrolledFor(device)
+		enrolledFor: (device) => journal.enrolledFor(device),
+		carriedDevice: (device) => journal.carriedDevice(device)
 	});
 }
 
