@@ -123,7 +123,10 @@ test('a wrong password and an address without account get the same answer', asyn
 		return { status: answer.status, kept, body };
 	};
 	// As a browser sends it without and with JavaScript.
-	for (const headers of [{}, { accept: 'application/json', 'x-sveltekit-action': 'true' }] as Fields[]) {
+	for (const headers of [
+		{},
+		{ accept: 'application/json', 'x-sveltekit-action': 'true' }
+	] as Fields[]) {
 		const known = await answerTo('erna@example.org', headers);
 		expect(known.body).toContain('do not go together');
 		expect(await answerTo('nema@example.org', headers)).toEqual(known);
