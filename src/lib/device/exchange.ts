@@ -28,7 +28,7 @@ import type { DeviceStore } from './store';
 import { Keys } from './verify';
 
 /** How the name of an exported file ends. */
-export const EXPORT_SUFFIX = '.tallybar.json';
+const EXPORT_SUFFIX = '.tallybar.json';
 
 const FORMAT = 'tallybar-export';
 
@@ -55,7 +55,7 @@ const ExportFile = z.object({
 type ExportFile = z.output<typeof ExportFile>;
 
 export interface Exported {
-	/** Proposed name, ending in {@link EXPORT_SUFFIX}. */
+	/** Proposed name, ending in `.tallybar.json`. */
 	readonly name: string;
 	readonly text: string;
 	readonly lines: number;
