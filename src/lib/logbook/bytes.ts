@@ -87,12 +87,7 @@ function checkText(text: string, path: string): void {
  */
 export function tidy(value: unknown): Json {
 	if (typeof value === 'string')
-		return value
-			.toWellFormed()
-			.normalize('NFC')
-			.replace(/\r\n?/g, '\n')
-			.replace(/\t/g, ' ')
-			.trim();
+		return value.toWellFormed().normalize('NFC').replace(/\r\n?/g, '\n').replace(/\t/g, ' ').trim();
 	if (Array.isArray(value)) return value.map(tidy);
 	if (value !== null && typeof value === 'object') {
 		const out: Record<string, Json> = {};

@@ -16,7 +16,6 @@ import {
 	Length,
 	Method,
 	MOST_HOLES,
-	Person,
 	PlannedMethod,
 	PublicKey,
 	Quantity,
@@ -28,6 +27,8 @@ import {
 } from './scalars';
 
 const optional = z.optional;
+/** A person with an account, or the `person.named` line of a helper without one. */
+const Person = Id;
 /** A field of the plan that a later line may empty again. */
 const clearable = <T extends z.core.SomeType>(schema: T) => optional(z.union([schema, z.null()]));
 const order = whole(0, 1_000_000_000);
@@ -760,7 +761,7 @@ export const KINDS = {
 	}
 } as const satisfies Record<string, KindTraits>;
 
-export type KindAtVersion = keyof typeof KINDS;
+type KindAtVersion = keyof typeof KINDS;
 type KindName<K extends string> = K extends `${infer Name}@${string}` ? Name : never;
 export type Kind = KindName<KindAtVersion>;
 

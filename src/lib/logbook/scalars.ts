@@ -66,16 +66,10 @@ export const Quantity = z.strictObject({
 /** A rivet's part number as read, trimmed. Nothing parsed is stored. */
 export const Callout = text(64);
 
-export const Prep = z.enum([
-	'plain',
-	'dimple',
-	'countersunk',
-	'countersunk_under_dimple',
-	'double_flush'
-]);
+const Prep = z.enum(['plain', 'dimple', 'countersunk', 'countersunk_under_dimple', 'double_flush']);
 
 /** One sheet of a stack. The first is the one under the manufactured head. */
-export const Sheet = z.strictObject({
+const Sheet = z.strictObject({
 	thickness: Length,
 	material: z.optional(text(32)),
 	prep: Prep,
@@ -131,6 +125,4 @@ export const Holes = z.array(HoleRange).check(
 	})
 );
 
-/** A person with an account, or the `person.named` line of a helper without one. */
-export const Person = Id;
 export const Role = z.enum(['owner', 'builder', 'inspector', 'follower']);

@@ -18,7 +18,7 @@ export const PAGE = 1000;
 const seq = whole(0, Number.MAX_SAFE_INTEGER);
 const received = whole(0, 8_640_000_000_000_000);
 
-export const Place = z.object({ seq, link: Hash });
+const Place = z.object({ seq, link: Hash });
 /** A place with the server's signature over it (`placeStatement`): proof that it was once the history. */
 export const SignedPlace = z.object({ seq, link: Hash, signature: Signature });
 export type SignedPlace = z.output<typeof SignedPlace>;
@@ -56,14 +56,7 @@ export type PushRequest = z.output<typeof PushRequest>;
  * accepted, duplicate: it is on the server's disk. held: it is too, but waits for a line it refers to.
  * pending: in quarantine, the owner has not decided. discarded: the owner decided against it. refused: see the code.
  */
-export const PushStatus = z.enum([
-	'accepted',
-	'duplicate',
-	'held',
-	'pending',
-	'discarded',
-	'refused'
-]);
+const PushStatus = z.enum(['accepted', 'duplicate', 'held', 'pending', 'discarded', 'refused']);
 export const PushResult = z.object({
 	/** Null when it could not be made out; results stand in the order of the entries. */
 	id: z.nullable(z.string()),

@@ -13,10 +13,7 @@ export interface Field {
 const MAPS = new Set(['overrides', 'steps', 'rules']);
 
 /** The fields a body states. A member of a map is the field `map.key`. */
-export function stated(
-	body: Readonly<Record<string, unknown>>,
-	skip?: string
-): [string, unknown][] {
+function stated(body: Readonly<Record<string, unknown>>, skip?: string): [string, unknown][] {
 	return Object.entries(body).flatMap(([key, value]): [string, unknown][] => {
 		if (key === skip) return [];
 		if (!MAPS.has(key)) return [[key, value]];

@@ -20,7 +20,7 @@ export type HoleKey = `${string}:${number}`;
 export const holeKey = (by: string | undefined, index: number): HoleKey => `${by ?? ''}:${index}`;
 
 /** `contested`: heads of different kinds. It counts as not done until somebody writes a line that stands on all of them. */
-export type HoleState = 'open' | 'driven' | 'left_open' | 'drilled_out' | 'retired' | 'contested';
+type HoleState = 'open' | 'driven' | 'left_open' | 'drilled_out' | 'retired' | 'contested';
 
 export interface Hole {
 	readonly key: HoleKey;
@@ -47,7 +47,7 @@ export interface Hole {
 }
 
 /** `decided`: what to do is decided but not done. */
-export type DefectState = 'open' | 'decided' | 'referred' | 'settled' | 'contested';
+type DefectState = 'open' | 'decided' | 'referred' | 'settled' | 'contested';
 
 export interface Defect {
 	readonly id: string;
