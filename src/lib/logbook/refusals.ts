@@ -243,6 +243,21 @@ export const REFUSALS = {
 	'device.other_person_signed_in': {
 		says: 'Somebody else is signed in. What you log stays on this device until you sign in again.'
 	},
+	'server.unreachable': {
+		says: 'The server cannot be reached. Your lines are on this device and go out when it can.'
+	},
+	'server.no_answer': {
+		says: 'Something other than the Tallybar server answered, as a Wi-Fi sign-in page does. Your lines are on this device and go out when the server answers.'
+	},
+	'server.failing': {
+		says: 'The server reports a fault. Your lines are on this device; it is tried again.'
+	},
+	'history.broken': {
+		says: 'What the server sent does not fit its own chain. Nothing of it was taken; it is asked again. If this stays, tell whoever runs the server.'
+	},
+	'device.trouble': {
+		says: 'The log on this device could not be read just now. Nothing was lost; it is tried again.'
+	},
 	'file.not_ours': {
 		says: 'This is not a Tallybar export. Choose a file that ends in .tallybar.json.'
 	},
