@@ -39,9 +39,6 @@ export interface SealedLine extends Line {
 	readonly seal: string;
 }
 
-/** Column of `quarantine` that is asked. */
-const ASIDE_BY = { id: 'id', cause: 'stands_on', code: 'code' } as const;
-
 /** One list of ids as one parameter: the SQL stays the same however many there are. */
 const listed = (values: Iterable<string | number>) =>
 	sql<string>`(select value from json_each(${JSON.stringify([...values])}))`;
@@ -181,16 +178,24 @@ export class Journal implements Log {
 			.execute();
 		for (const { device, ...row } of rows) this.#devices.set(device, row);
 		const unknown = [...new Set(devices)].some((device) => !this.#devices.has(device));
-		if (unknown) await this.lookUp(await this.#loadAside('code', ['device.carried']));
+		if (unknown && this.#hasAside) await this.lookUp(await this.#refusedEnrolments());
 	}
 
-	/**
-	 * A device whose enrolment somebody else brought: it waits for the owner, or was discarded. Its lines share its
-	 * fate.
-	 */
-	carriedDevice(device: string): { readonly line: string; readonly key: string } | undefined {
-		for (const { id, code, text } of this.#quarantine.values()) {
-			if (code !== 'device.carried' || text === null) continue;
+	/** Among what waits for the owner. Asked only when a push brings lines of devices nobody enrolled. */
+	async #refusedEnrolments(): Promise<string[]> {
+		const rows = await this.#trx
+			.selectFrom('quarantine')
+			.select('id')
+			.where('build', '=', this.build)
+			.where('text', 'like', '%"kind":"device.enrolled"%')
+			.execute();
+		return rows.map(({ id }) => id);
+	}
+
+	/** A device whose enrolment was refused: it waits for the owner, or was discarded. Its lines share its fate. */
+	refusedDevice(device: string): { readonly line: string; readonly key: string } | undefined {
+		for (const { id, text } of this.#quarantine.values()) {
+			if (text?.includes('"kind":"device.enrolled"') !== true) continue;
 			const { entry } = readOffered(text);
 			if (entry?.kind === 'device.enrolled' && entry.device === device)
 				return { line: id, key: entry.body.key };
@@ -199,14 +204,14 @@ export class Journal implements Log {
 	}
 
 	/** Held lines and lines in quarantine, whole. What this transaction already changed is not read over. */
-	async #loadAside(by: 'id' | 'cause' | 'code', ids: readonly string[]): Promise<string[]> {
+	async #loadAside(by: 'id' | 'cause', ids: readonly string[]): Promise<string[]> {
 		if (!this.#hasAside) return [];
 		const list = listed(ids);
 		const held = await this.#trx
 			.selectFrom('held')
 			.select(['id', 'hash', 'text', 'seal', 'carrier', 'waits_for', 'received'])
 			.where('build', '=', this.build)
-			.where(by === 'id' ? 'id' : 'waits_for', 'in', by === 'code' ? listed([]) : list)
+			.where(by === 'id' ? 'id' : 'waits_for', 'in', list)
 			.execute();
 		for (const line of held) if (!this.#changed.held.has(line.id)) this.#held.set(line.id, line);
 		const quarantined = await this.#trx
@@ -225,7 +230,7 @@ export class Journal implements Log {
 				'decided_at'
 			])
 			.where('build', '=', this.build)
-			.where(ASIDE_BY[by], 'in', list)
+			.where(by === 'id' ? 'id' : 'stands_on', 'in', list)
 			.execute();
 		for (const line of quarantined)
 			if (!this.#changed.quarantine.has(line.id)) this.#quarantine.set(line.id, line);

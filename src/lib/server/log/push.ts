@@ -282,7 +282,7 @@ class Taking {
 		const key =
 			this.#journal.device(entry.device)?.key ??
 			this.#batch.keyOf(entry.device) ??
-			this.#journal.carriedDevice(entry.device)?.key;
+			this.#journal.refusedDevice(entry.device)?.key;
 		if (key === undefined) return 'device.unknown';
 		const seal = this.#batch.sealOf(line, key);
 		if (seal) return this.#journal.keepSeal(seal);

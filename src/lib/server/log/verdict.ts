@@ -16,15 +16,15 @@ const WITHDRAWABLE: ReadonlySet<string> = new Set<Kind>([
 	'person.named'
 ]);
 
-/** A log that also knows enrolments which wait for the owner, because somebody else brought them. */
-type WaitingLog = Log & Pick<Journal, 'carriedDevice'>;
+/** A log that also knows enrolments that were refused. */
+type WaitingLog = Log & Pick<Journal, 'refusedDevice'>;
 
 /** What becomes of a line whose seal was found sound. */
 export function verdict(entry: Entry, log: WaitingLog): Judgement {
 	const judgement = judge(entry, log);
 	// It shares the fate of its device's enrolment, instead of waiting for it out of everybody's sight.
 	if (judgement.verdict === 'refuse' && judgement.code === 'device.unknown')
-		return log.carriedDevice(entry.device)
+		return log.refusedDevice(entry.device)
 			? { verdict: 'refuse', code: 'entry.referent_refused' }
 			: judgement;
 	if (judgement.verdict === 'accept' && entry.kind === 'entry.withdrawn') {
@@ -39,8 +39,8 @@ export function verdict(entry: Entry, log: WaitingLog): Judgement {
 export function refusedReferent(entry: Entry, log: WaitingLog): string | null {
 	const enrolled = log.enrolledFor(entry.device) !== undefined;
 	if (!enrolled && entry.kind !== 'device.enrolled') {
-		const carried = log.carriedDevice(entry.device);
-		if (carried) return carried.line;
+		const refused = log.refusedDevice(entry.device);
+		if (refused) return refused.line;
 	}
 	return referents(entry).find((id) => !log.find(id) && log.isQuarantined(id)) ?? null;
 }
@@ -58,7 +58,7 @@ export function verdictForOwner(entry: Entry, journal: Journal): Judgement {
 		find: (id) => journal.find(id),
 		isQuarantined: (id) => journal.isQuarantined(id),
 		enrolledFor: (device) => journal.enrolledFor(device),
-		carriedDevice: (device) => journal.carriedDevice(device)
+		refusedDevice: (device) => journal.refusedDevice(device)
 	});
 }
 
