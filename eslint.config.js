@@ -37,7 +37,7 @@ export default defineConfig(
 	},
 	{
 		// Plain JavaScript with JSDoc types: a typed declaration is the only way to say what JSON holds.
-		files: ['src/bin/*.js', '*.config.js'],
+		files: ['src/bin/*.js', 'tests/bench/*.js', '*.config.js'],
 		rules: { '@typescript-eslint/no-unsafe-assignment': 'off' }
 	},
 	{

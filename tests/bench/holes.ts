@@ -1,0 +1,2 @@
+/** Holes of each seam the bench plans. */
+export const HOLES = 100;
