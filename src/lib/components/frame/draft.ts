@@ -3,14 +3,13 @@ import * as z from 'zod/mini';
 import { dropDraft, loadDraft, saveDraft } from '$lib/device/read';
 import type { DeviceStore } from '$lib/device/store';
 
-const DELAY = 300;
-
 export class Draft<T extends z.core.$ZodType> {
 	readonly #store: DeviceStore;
 	readonly #key: string;
 	readonly #schema: T;
-	#timer: ReturnType<typeof setTimeout> | undefined;
-	#waiting: z.output<T> | undefined;
+	/** What shall be kept next; `drop` for nothing. */
+	#next: { readonly value: z.output<T> } | 'drop' | undefined;
+	#writing = false;
 
 	/** @param key names the form; @param schema of what is kept: a draft of an older form is dropped */
 	constructor(store: DeviceStore, key: string, schema: T) {
@@ -29,28 +28,31 @@ export class Draft<T extends z.core.$ZodType> {
 		}
 	}
 
-	/** Keeps the value a moment after the last change. */
+	/** At once, since a reload may follow the last key press; the latest waits only while another is being written. */
 	keep(value: z.output<T>): void {
-		this.#waiting = value;
-		clearTimeout(this.#timer);
-		this.#timer = setTimeout(() => {
-			this.flush();
-		}, DELAY);
-	}
-
-	/** Keeps at once what waits to be kept: the form goes away. */
-	flush(): void {
-		clearTimeout(this.#timer);
-		const value = this.#waiting;
-		this.#waiting = undefined;
-		// Without room the text stays in the form, and saving the line says so.
-		if (value !== undefined) saveDraft(this.#store, this.#key, value).catch(() => undefined);
+		this.#next = { value };
+		void this.#write();
 	}
 
 	/** It became a line, or was given up. */
 	drop(): void {
-		clearTimeout(this.#timer);
-		this.#waiting = undefined;
-		dropDraft(this.#store, this.#key).catch(() => undefined);
+		this.#next = 'drop';
+		void this.#write();
+	}
+
+	async #write(): Promise<void> {
+		if (this.#writing) return;
+		this.#writing = true;
+		while (this.#next !== undefined) {
+			const next = this.#next;
+			this.#next = undefined;
+			try {
+				if (next === 'drop') await dropDraft(this.#store, this.#key);
+				else await saveDraft(this.#store, this.#key, next.value);
+			} catch {
+				// Without room the text stays in the form, and saving the line says so.
+			}
+		}
+		this.#writing = false;
 	}
 }

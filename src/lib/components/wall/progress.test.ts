@@ -69,7 +69,7 @@ describe('progress', () => {
 describe('the tag of a seam or assembly', () => {
 	it('says the worst first', () => {
 		const worst = { driven: 9, open: 0, contested: 1, defects: 2 };
-		expect(stateTag(seam('a', worst))?.words).toBe('2 with a defect');
+		expect(stateTag(seam('a', worst))?.words).toBe('2 with defect');
 		expect(stateTag(seam('a', { ...worst, defects: 0 }))?.words).toBe('1 contested');
 		expect(stateTag(seam('a', { driven: 10, open: 0 }))?.words).toBe('all driven');
 		expect(stateTag(seam('a', { driven: 8, open: 0, leftOpen: 2 }))?.words).toBe('2 left open');

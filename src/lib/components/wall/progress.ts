@@ -49,7 +49,7 @@ export function stateTag(
 ):
 	| { readonly look: 'solid' | 'outline' | 'hatched' | 'grease'; readonly words: string }
 	| undefined {
-	if (defects > 0) return { look: 'grease', words: `${defects} with a defect` };
+	if (defects > 0) return { look: 'grease', words: `${defects} with defect` };
 	if (contested > 0) return { look: 'hatched', words: `${contested} contested` };
 	if (closed) return { look: 'solid', words: 'closed' };
 	if (holes > 0 && driven === holes) return { look: 'solid', words: 'all driven' };

@@ -1,0 +1,160 @@
+import type { Page } from '@playwright/test';
+import { expect, test } from './server';
+import type { TestServer } from './server';
+
+// Two browsers and a server that dies: on a busy machine that is more than a minute.
+test.slow();
+
+const PASSWORD = 'longeron flap gusset';
+
+async function register(page: Page, server: TestServer, name: string): Promise<void> {
+	await page.goto(`${server.url}/register`);
+	await page.getByRole('textbox', { name: 'Your name' }).fill(name);
+	await page
+		.getByRole('textbox', { name: 'E-mail address' })
+		.fill(`${name.toLowerCase()}@example.org`);
+	await page.getByRole('textbox', { name: 'Password' }).fill(PASSWORD);
+	await page.getByRole('button', { name: 'Register' }).click();
+	await page.waitForURL('**/builds');
+	await page.evaluate(async () => {
+		await navigator.serviceWorker.ready;
+	});
+	await expect(page.getByRole('heading', { name: 'My builds' })).toBeVisible();
+}
+
+test('with the server gone a build is opened and planned, and is there after a deep link', async ({
+	page,
+	context,
+	server
+}) => {
+	await register(page, server, 'Ana');
+	await server.kill();
+	await page.goto(`${server.url}/builds`);
+
+	// A name is asked for before anything is saved.
+	await page.getByRole('button', { name: 'Open the build' }).click();
+	await expect(page.getByText('Give it the name painted on it')).toBeVisible();
+	await page.getByRole('textbox', { name: 'Name', exact: true }).fill('Yarrow Two');
+	await page.getByRole('button', { name: 'Open the build' }).click();
+	await page.waitForURL('**/plan');
+
+	await page.getByRole('link', { name: 'Add the first assembly' }).click();
+	await page.getByRole('textbox', { name: 'Name' }).fill('Left elevator');
+	await page.getByRole('button', { name: 'Plan this assembly' }).click();
+
+	// What is wrong is said at its field, and what was typed stays, also over a reload.
+	await page.getByRole('textbox', { name: 'Name' }).fill('Skin to spar, lower');
+	await page.getByRole('combobox', { name: 'Rivet, as the plans call it' }).fill('MS20426AD3-3.5');
+	await page.getByRole('textbox', { name: 'How many' }).fill('64');
+	await page.getByRole('textbox', { name: 'Pitch' }).fill('3/7');
+	await page.getByRole('button', { name: 'Plan this seam' }).click();
+	await expect(page.getByRole('textbox', { name: 'Pitch' })).toBeFocused();
+	await expect(page.getByText('“3/7” is a fraction over 7')).toBeVisible();
+	await page.getByRole('textbox', { name: 'Pitch' }).fill('3/4');
+	await page.getByRole('textbox', { name: 'Edge distance' }).fill('.25');
+	await page.reload();
+	await expect(page.getByRole('textbox', { name: 'Edge distance' })).toHaveValue('.25');
+	await expect(page.getByRole('textbox', { name: 'Pitch' })).toHaveValue('3/4');
+	await page.getByRole('button', { name: 'Plan this seam' }).click();
+	await expect(page.getByText('Skin to spar, lower: 64 holes planned')).toBeVisible();
+
+	// Changed: only what was changed, and the table follows.
+	await page.getByRole('link', { name: 'Back to the plan' }).click();
+	await page.getByRole('link', { name: 'Skin to spar, lower' }).click();
+	const callout = page.getByRole('combobox', { name: 'Rivet, as the plans call it' });
+	await expect(callout).toHaveValue('MS20426AD3-3.5');
+	await callout.fill('MS20426AD3-4');
+	await page.getByRole('button', { name: 'Save the change' }).click();
+	await expect(page.getByText('Changed: Rivet. Saved on this device.')).toBeVisible();
+	await expect(page.getByRole('row', { name: /Skin to spar, lower/ })).toContainText(
+		'MS20426 AD 3-4'
+	);
+
+	// In a new tab, by an address never visited in it, with the server still dead.
+	const later = await context.newPage();
+	await later.goto(page.url());
+	await expect(later.getByRole('combobox', { name: 'Rivet, as the plans call it' })).toHaveValue(
+		'MS20426AD3-4'
+	);
+	await later.getByText('Add holes', { exact: true }).click();
+	await later.getByRole('textbox', { name: 'How many' }).fill('2');
+	await later.getByRole('button', { name: 'Add these holes' }).click();
+	await expect(later.getByText('2 holes added')).toBeVisible();
+
+	// The first tab hears of it, without a reload.
+	await page.getByRole('link', { name: 'Wall' }).click();
+	await expect(page.getByText('of 66 holes driven')).toBeVisible();
+	await expect(page.getByText('seam planned: Skin to spar, lower')).toBeVisible();
+	await expect(page.getByRole('article', { name: 'Left elevator' })).toContainText('0 of 66');
+
+	// The address of the build alone leads to its wall.
+	const wall = new URL(page.url());
+	await later.goto(`${wall.origin}${wall.pathname.replace(/\/wall$/, '')}`);
+	await expect(later.getByText('of 66 holes driven')).toBeVisible();
+
+	// The server back, everything goes out.
+	await server.start();
+	await later.reload();
+	await expect(later.getByRole('link', { name: /^Sync: synced/ })).toBeVisible();
+});
+
+test('two people who changed one field apart see both values, and choosing settles it for both', async ({
+	browser,
+	server
+}) => {
+	const [ana, jo] = await Promise.all(
+		['Ana', 'Jo'].map(async (name) => {
+			const context = await browser.newContext();
+			const page = await context.newPage();
+			await register(page, server, name);
+			return { context, page };
+		})
+	);
+	if (!ana || !jo) throw new Error('two people are needed');
+
+	await ana.page.getByRole('textbox', { name: 'Name', exact: true }).fill('Yarrow Two');
+	await ana.page.getByRole('button', { name: 'Open the build' }).click();
+	await ana.page.getByRole('link', { name: 'Add the first assembly' }).click();
+	await ana.page.getByRole('textbox', { name: 'Name' }).fill('Rudder');
+	await ana.page.getByRole('button', { name: 'Plan this assembly' }).click();
+	await ana.page.getByRole('textbox', { name: 'Name' }).fill('Skin to ribs');
+	await ana.page.getByRole('textbox', { name: 'How many' }).fill('20');
+	await ana.page.getByRole('button', { name: 'Plan this seam' }).click();
+	await expect(ana.page.getByRole('link', { name: /^Sync: synced/ })).toBeVisible();
+
+	// The owner brings Jo in; Jo's phone hears of it by itself.
+	await ana.page.getByRole('link', { name: 'Crew' }).click();
+	await ana.page.getByRole('textbox', { name: 'E-mail address' }).fill('jo@example.org');
+	await ana.page.getByRole('button', { name: 'Add to the crew' }).click();
+	await expect(ana.page.getByText('Added to the crew.')).toBeVisible();
+	await jo.page.reload();
+	await jo.page.getByRole('link', { name: 'Yarrow Two' }).click();
+	await expect(jo.page.getByText('of 20 holes driven')).toBeVisible();
+
+	await ana.page.getByRole('link', { name: 'Yarrow Two' }).click();
+	const apart = [
+		{ ...ana, callout: 'MS20470AD4-5' },
+		{ ...jo, callout: 'MS20470AD4-6' }
+	];
+	for (const { page } of apart) {
+		await page.getByRole('link', { name: 'Plan', exact: true }).click();
+		await page.getByRole('link', { name: 'Skin to ribs' }).click();
+		await expect(page.getByRole('button', { name: 'Save the change' })).toBeVisible();
+	}
+	for (const { context } of apart) await context.setOffline(true);
+	for (const { page, callout } of apart) {
+		await page.getByRole('combobox', { name: 'Rivet, as the plans call it' }).fill(callout);
+		await page.getByRole('button', { name: 'Save the change' }).click();
+		await expect(page.getByText('Changed: Rivet. Saved on this device.')).toBeVisible();
+	}
+	for (const { context } of apart) await context.setOffline(false);
+
+	for (const { page } of apart)
+		await expect(page.getByText('2 values')).toBeVisible({ timeout: 20_000 });
+	await jo.page.getByRole('button', { name: /^Keep this.*AD 4-5$/ }).click();
+	for (const { page } of apart) {
+		await expect(page.getByText('2 values')).toHaveCount(0, { timeout: 20_000 });
+		await expect(page.getByRole('row', { name: /Skin to ribs/ })).toContainText('MS20470 AD 4-5');
+	}
+	await Promise.all([ana.context.close(), jo.context.close()]);
+});
