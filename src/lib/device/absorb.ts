@@ -217,10 +217,15 @@ export async function absorbResults(
 			const row = await tx.objectStore('builds').get(build);
 			if (!row) return undefined;
 			const changed = new Map<string, undefined>();
-			for (const { row: offered, result } of outcomes) {
-				const outbox = tx.objectStore('outbox');
-				const there = await outbox.get([build, offered.n, offered.id]);
-				const entry = await tx.objectStore('entries').get([build, offered.id]);
+			const outbox = tx.objectStore('outbox');
+			// All asked for at once: one after the other, a batch would wait for the disk four hundred times.
+			const found = await Promise.all(
+				outcomes.map(async ({ row: { n, id } }) =>
+					Promise.all([outbox.get([build, n, id]), tx.objectStore('entries').get([build, id])])
+				)
+			);
+			for (const [i, { row: offered, result }] of outcomes.entries()) {
+				const [there, entry] = found[i] ?? [];
 				// Came back in a pull of another tab meanwhile: that is the last word.
 				if (!entry || (entry.history === row.history && entry.seq !== undefined)) continue;
 				const after = settle(there ?? rowFor(offered, now), result, now);
@@ -320,11 +325,25 @@ export async function offerAgain(
 	build: string,
 	rows: readonly Pick<OutboxRow, 'n' | 'id'>[]
 ): Promise<void> {
-	await changeRows(store, build, rows, (there, now) =>
-		there.state === 'acknowledged'
-			? // The first time at once; a server that goes on saying yes and not keeping it is asked less and less.
-				{ ...there, state: 'waiting', ...(there.tries > 1 && { due: now + backOff(there.tries) }) }
-			: there
+	if (rows.length === 0) return;
+	const asked = new Set(rows.map(({ id }) => id));
+	// Almost always none is left: one look instead of one for each.
+	const left = await store.handle.run((db) =>
+		db.getAllFromIndex('outbox', 'byState', within(build, 'acknowledged'))
+	);
+	await changeRows(
+		store,
+		build,
+		left.filter(({ id }) => asked.has(id)),
+		(there, now) =>
+			there.state === 'acknowledged'
+				? // The first time at once; a server that goes on saying yes and not keeping it is asked less and less.
+					{
+						...there,
+						state: 'waiting',
+						...(there.tries > 1 && { due: now + backOff(there.tries) })
+					}
+				: there
 	);
 }
 
