@@ -93,6 +93,9 @@ const LOCK_PATIENCE = 60_000;
 const LIST_AGE = 60_000;
 const LIVE_LEAST = 2000;
 const STATUS_DEBOUNCE = 20;
+/** Of the time, at most one part in so many goes into counting what waits: with ten thousand lines a count is long. */
+const STATUS_SHARE = 10;
+const MOST_STATUS_COST = 100;
 
 const OF_THE_PAGE: LoopEnv = {
 	visible: () => typeof document === 'undefined' || document.visibilityState === 'visible',
@@ -130,6 +133,8 @@ export class SyncLoop {
 	#liveTimer: Timer | undefined;
 	#liveFailures = 0;
 	#statusTimer: Timer | undefined;
+	/** How long the last count took, in ms. */
+	#statusCost = 0;
 	#waitingForRound: (() => void)[] = [];
 
 	constructor(store: DeviceStore, transport: Transport, env: Partial<LoopEnv> = {}) {
@@ -377,15 +382,20 @@ export class SyncLoop {
 
 	#refreshSoon(): void {
 		if (this.#stopped) return;
-		this.#statusTimer ??= setTimeout(() => {
-			this.#statusTimer = undefined;
-			void this.#refresh();
-		}, STATUS_DEBOUNCE);
+		this.#statusTimer ??= setTimeout(
+			() => {
+				this.#statusTimer = undefined;
+				void this.#refresh();
+			},
+			Math.max(STATUS_DEBOUNCE, this.#statusCost * STATUS_SHARE)
+		);
 	}
 
 	async #refresh(): Promise<void> {
+		const started = this.#env.elapsed();
 		try {
 			const builds = await statusOfBuilds(this.#store, this.#reports);
+			this.#statusCost = Math.min(MOST_STATUS_COST, this.#env.elapsed() - started);
 			this.#tell({ ...this.#sum(builds), phase: this.#phase });
 		} catch (error) {
 			const fault = faultOf(error);
