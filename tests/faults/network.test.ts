@@ -117,7 +117,7 @@ async function openBench(page: Page, { url }: Proxy): Promise<{ build: string; s
 	await page.waitForURL('**/builds');
 	await page.goto(`${url}/builds/${build}/bench/${seam}`);
 	await count(page, 0);
-	return { build, seam };
+	return { seam };
 }
 
 const driven = (page: Page) => page.getByRole('button', { name: /^driven \+\d/i });
