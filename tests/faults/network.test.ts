@@ -103,7 +103,7 @@ const test = base.extend<{ between: Proxy; behind: TestServer }>({
 });
 test.use({ viewport: { width: 412, height: 823 } });
 
-async function openBench(page: Page, { url }: Proxy): Promise<{ build: string; seam: string }> {
+async function openBench(page: Page, { url }: Proxy): Promise<{ seam: string }> {
 	const caller = await Caller.registered({ url }, 'ana');
 	const person = (await caller.person())?.id ?? '';
 	const device = await makeDevice(person);
