@@ -6,10 +6,13 @@ import type { Seam } from '$lib/logbook/fold/seam';
 import { keepCrew, keepSeam, recallCrew, recallSeam } from './memory';
 import type { HowDriven, Pick, RunLength } from './run';
 
-/** A second press within this time is the same press: gloves bounce, and so do pedals. */
+/** A second press of a key within this time is the same press: gloves bounce, and so do pedals. */
 const APART = 1000;
 const ANSWER = 700;
 export const ZOOMS = [24, 66, 96, 128] as const;
+
+/** What was pressed: pressing the same twice within a second is pressing it once. */
+export type Act = 'drive' | 'undo' | 'sheet';
 
 export interface Answer {
 	readonly big: string;
@@ -32,7 +35,7 @@ export class BenchWork {
 	#said = $state('');
 	/** The last line written here; until the fold shows it, what is next would still be what was just driven. */
 	#awaited = $state<string>();
-	#pressed = 0;
+	readonly #pressed: Partial<Record<Act, number>> = {};
 	#timer: ReturnType<typeof setTimeout> | undefined;
 
 	constructor(store: DeviceStore, build: string, seam: () => Seam | undefined) {
@@ -132,15 +135,16 @@ export class BenchWork {
 	 * Writes lines and answers once they are on the disk, not before.
 	 * @returns whether they are; if not, `problem` says why and what was kept
 	 */
-	async write(drafts: readonly Draft[], answer: Answer): Promise<boolean> {
+	async write(act: Act, drafts: readonly Draft[], answer: Answer): Promise<boolean> {
 		const now = performance.now();
-		if (!this.ready || drafts.length === 0 || now - this.#pressed < APART) return false;
-		this.#pressed = now;
+		const last = this.#pressed[act] ?? -Infinity;
+		if (!this.ready || drafts.length === 0 || now - last < APART) return false;
+		this.#pressed[act] = now;
 		this.#busy = true;
 		this.#problem = undefined;
 		try {
 			const entries = await appendEntries(this.#store, this.#build, drafts);
-			this.#pressed = performance.now();
+			this.#pressed[act] = performance.now();
 			this.#awaited = entries.findLast((entry) => entry.seam === this.#seam()?.id)?.id;
 			this.#pick = undefined;
 			this.#show(answer);

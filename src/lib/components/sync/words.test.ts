@@ -1,5 +1,5 @@
 import { describe, expect, it } from 'vitest';
-import { savedText, syncText, waitsFor } from './words';
+import { savedIn, syncText, waitsFor } from './words';
 
 const quiet = {
 	phase: 'idle' as const,
@@ -45,9 +45,9 @@ describe('the words of the header', () => {
 });
 
 it('the bench says where the lines of its build are', () => {
-	expect(savedText(undefined)).toBe('on this phone');
-	expect(savedText({ ...quiet, waiting: 3, synced: false })).toBe('on this phone · 3 waiting');
-	expect(savedText(quiet)).toBe('synced 21:42');
+	expect(savedIn(undefined).words).toBe('on this phone');
+	expect(savedIn({ ...quiet, waiting: 3, synced: false }).words).toBe('3 waiting');
+	expect(savedIn(quiet).words).toBe('synced 21:42');
 });
 
 it('the panel says of each build what waits and why', () => {

@@ -49,16 +49,16 @@ export function syncText(status: Counts): SyncText {
 	return { look: 'outline', words: 'on this phone', ...beside };
 }
 
-/** Where the lines of one build are, for the bench: "on this phone · 3 waiting". */
-export function savedText(
+/** Where the lines of one build are, for the bench: "3 waiting" are on this phone and nowhere else yet. */
+export function savedIn(
 	build: Pick<BuildStatus, 'waiting' | 'parked' | 'held' | 'synced' | 'lastSuccess'> | undefined
-): string {
-	if (!build) return 'on this phone';
-	const waiting = build.waiting + build.parked;
-	if (waiting > 0) return `on this phone · ${waiting} waiting`;
-	if (build.held > 0) return `with the server · ${build.held} held`;
-	if (build.synced && build.lastSuccess !== undefined) return `synced ${hour(build.lastSuccess)}`;
-	return 'on this phone';
+): SyncText {
+	const waiting = build ? build.waiting + build.parked : 0;
+	if (waiting > 0) return { look: 'hatched', words: `${waiting} waiting` };
+	if (build && build.held > 0) return { look: 'hatched', words: `${build.held} held` };
+	if (build?.synced && build.lastSuccess !== undefined)
+		return { look: 'solid', words: `synced ${hour(build.lastSuccess)}` };
+	return { look: 'outline', words: 'on this phone' };
 }
 
 /** What a build's lines wait for, each as a sentence. Empty when nothing waits. */
