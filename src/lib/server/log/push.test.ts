@@ -262,7 +262,15 @@ describe('one bad line', () => {
 		expect(await server.offer(inspector, build, [b], { seals })).toEqual([
 			'refused entry.referent_refused'
 		]);
-		await decideQuarantine(server, owner.author, build, { ids: [first.id], decision: 'accept' });
+		// Whose key it is nobody but Bea can say, in her own session: not Ines, and not the owner.
+		await decideQuarantine(server, owner.author, build, {
+			ids: [first.id, a.id],
+			decision: 'accept'
+		});
+		const { entries } = await server.pullAll(owner.author, build);
+		expect(entries.map((line) => line.text)).not.toContain(first.text);
+		// She imports the file into her new phone.
+		expect(await server.offer(builder, build, [first], { seals })).toEqual(['accepted']);
 		expect(await server.offer(inspector, build, [first, a, b], { seals })).toEqual([
 			'duplicate',
 			'duplicate',

@@ -11,7 +11,14 @@ import type { LogServer } from './log-server';
 import { Batch, referents } from './offered';
 import type { Line, Offered } from './offered';
 import { writeServerLines } from './server-lines';
-import { isForLater, isForOwner, refusedReferent, settle, verdict } from './verdict';
+import {
+	enrolmentRefusal,
+	isForLater,
+	isForOwner,
+	refusedReferent,
+	settle,
+	verdict
+} from './verdict';
 
 /** Refused lines kept for one carrier in one build: what can never be accepted, and what the owner may accept. */
 const MOST_BROKEN = 2000;
@@ -243,8 +250,8 @@ class Taking {
 		}
 		if (seal === 'seal.broken' || seal === 'seal.missing') return this.#refuse(line, seal);
 
-		const code = proven ? undefined : await this.#enrolmentRefusal(line);
-		if (code) return this.#refuse(line, code, seal);
+		const code = proven ? undefined : await enrolmentRefusal(line.entry, this.#actor, journal);
+		if (code) return this.#refuse(line, this.#unlessCarriedHome(code), seal);
 		const judgement = proven ? ({ verdict: 'accept' } as const) : verdict(line.entry, journal);
 		switch (judgement.verdict) {
 			case 'accept':
@@ -293,22 +300,6 @@ class Taking {
 	}
 
 	/**
-	 * Why this device may not be enrolled by this line. A key enters the log in the session of the person it is to
-	 * speak for, or when the owner says so, and is the only one of its device, here and in every other build.
-	 */
-	async #enrolmentRefusal({ entry }: Line): Promise<RefusalCode | undefined> {
-		if (entry.kind !== 'device.enrolled') return undefined;
-		const device = { person: entry.author, key: entry.body.key };
-		const enrolled = this.#journal.device(entry.device);
-		if (enrolled) return enrolled.key === device.key ? undefined : 'device.enrolled_before';
-		if (entry.author !== this.#actor)
-			return this.#journal.member(entry.author) ? 'device.carried' : undefined;
-		return (await this.#journal.isEnrolledOtherwise(entry.device, device))
-			? 'device.enrolled_before'
-			: undefined;
-	}
-
-	/**
 	 * After a restore the crew line of the carrier may be among what was lost, and arrive a push later: until the carrier
 	 * is known, nothing is said about authors that could not be taken back.
 	 */
@@ -329,10 +320,14 @@ class Taking {
 			code === 'entry.referent_refused' && entry ? refusedReferent(entry, journal) : null;
 		if (kept?.hash === hash) {
 			if (kept.decision === 'discarded') return { status: 'discarded' };
-			// It may have come with a sound seal only now, or be refused for another reason.
-			if (kept.code !== code || kept.seal !== seal)
+			// Who else brings an enrolment takes nothing back that its author's own session said.
+			if (code === 'device.carried' && kept.carrier === entry?.author) return refused;
+			const carrier = entry?.author === this.#actor ? this.#actor : kept.carrier;
+			// It may have come with a sound seal only now, be refused for another reason, or come from its author.
+			if (kept.code !== code || kept.seal !== seal || kept.carrier !== carrier)
 				journal.quarantine({
 					...kept,
+					carrier,
 					text: kept.text ?? this.#textToKeep(line, code),
 					seal: seal ?? kept.seal,
 					code,

@@ -7,7 +7,13 @@ import type { LogServer } from './log-server';
 import { ownerRefusal } from './membership';
 import { readOffered, referents } from './offered';
 import type { Line } from './offered';
-import { isForOwner, refusedReferent, settle, verdictForOwner } from './verdict';
+import {
+	enrolmentRefusal,
+	isAcceptable,
+	refusedReferent,
+	settle,
+	verdictForOwner
+} from './verdict';
 
 /** The list is for a person to read; what is left shows when these are decided. */
 const MOST_LISTED = 500;
@@ -70,7 +76,7 @@ export async function listQuarantine(
 				text,
 				carrier,
 				at: received,
-				acceptable: isForOwner(code) && text !== null && seal !== null
+				acceptable: isAcceptable({ code, text, seal, carrier })
 			})),
 			...held.map(({ id, text, carrier, received }) => ({
 				id,
@@ -142,7 +148,7 @@ async function accept(journal: Journal, ids: readonly string[]): Promise<Map<str
 		const waiting = journal.held(id);
 		if (waiting) held.add(id);
 		const kept = waiting ? { ...waiting, code: 'entry.waits' } : journal.quarantined(id);
-		if (!kept || kept.text === null || kept.seal === null || !isForOwner(kept.code)) continue;
+		if (!kept || kept.text === null || kept.seal === null || !isAcceptable(kept)) continue;
 		const line = readOffered(kept.text);
 		if (line.entry && line.hash === kept.hash)
 			lines.push({ ...line, seal: kept.seal, carrier: kept.carrier });
@@ -155,7 +161,10 @@ async function accept(journal: Journal, ids: readonly string[]): Promise<Map<str
 	for (const { carrier, ...line } of lines) {
 		const { id, entry } = line;
 		if (journal.find(id)) continue;
-		const judgement = verdictForOwner(entry, journal);
+		const code = await enrolmentRefusal(entry, carrier, journal);
+		const judgement = code
+			? ({ verdict: 'refuse', code } as const)
+			: verdictForOwner(entry, journal);
 		switch (judgement.verdict) {
 			case 'accept':
 				journal.append(line);

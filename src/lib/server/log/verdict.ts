@@ -6,7 +6,7 @@ import { mayWrite } from '$lib/logbook/permission';
 import { isRefusalCode, refusal } from '$lib/logbook/refusals';
 import type { RefusalCode } from '$lib/logbook/refusals';
 import { readOffered, referents } from './offered';
-import type { Journal } from './journal';
+import type { Journal, QuarantinedLine } from './journal';
 
 /** Only what people wrote about people or showed of them can be withdrawn; everything else is struck. */
 const WITHDRAWABLE: ReadonlySet<string> = new Set<Kind>([
@@ -62,6 +62,41 @@ export function verdictForOwner(entry: Entry, journal: Journal): Judgement {
 	});
 }
 
+/**
+ * Why a device may not be enrolled by this line, brought in this person's session. A key enters the log in the session
+ * of the person it is to speak for and in no other, the owner's neither: else an owner could sign in the name of an
+ * inspector with a key of their own making. And it is the only one of its device, here and in every other build: else
+ * a false enrolment in one build would keep the true device out of all others.
+ */
+export async function enrolmentRefusal(
+	entry: Entry,
+	carrier: string,
+	journal: Journal
+): Promise<RefusalCode | undefined> {
+	if (entry.kind !== 'device.enrolled') return undefined;
+	const device = { person: entry.author, key: entry.body.key };
+	const enrolled = journal.device(entry.device);
+	if (enrolled) return enrolled.key === device.key ? undefined : 'device.enrolled_before';
+	if (entry.author !== carrier)
+		return journal.member(entry.author) ? 'device.carried' : 'entry.author_unknown';
+	return (await journal.isEnrolledOtherwise(entry.device, device))
+		? 'device.enrolled_before'
+		: undefined;
+}
+
+/** May the owner take this line into the log, as far as can be said without the log? */
+export function isAcceptable({
+	code,
+	text,
+	seal,
+	carrier
+}: Pick<QuarantinedLine, 'code' | 'text' | 'seal' | 'carrier'>): boolean {
+	if (!isForOwner(code) || text === null || seal === null) return false;
+	if (!text.includes('"kind":"device.enrolled"')) return true;
+	const { entry } = readOffered(text);
+	return entry?.kind !== 'device.enrolled' || entry.author === carrier;
+}
+
 /** May the owner take lines refused with this code into the log? */
 export function isForOwner(code: string): boolean {
 	return isRefusalCode(code) && refusal(code).entry === 'owner';
@@ -92,7 +127,8 @@ export async function settle(journal: Journal, moved: Iterable<string>): Promise
 			const { entry, id } = line;
 			// One that was released by another of this round.
 			if (journal.find(id)) continue;
-			const judgement = verdict(entry, journal);
+			const code = await enrolmentRefusal(entry, kept.carrier, journal);
+			const judgement = code ? ({ verdict: 'refuse', code } as const) : verdict(entry, journal);
 			switch (judgement.verdict) {
 				case 'accept':
 					journal.append(line);
