@@ -98,6 +98,49 @@ describe('a line that was saved', () => {
 	});
 });
 
+describe('a line whose transaction was committed before its connection broke', () => {
+	/** The first piece of work ends, and then its connection says that it was cut. */
+	function cutAfterFirst(store: DeviceStore): void {
+		const run = store.handle.run.bind(store.handle);
+		let first = true;
+		store.handle.run = (work) =>
+			run(async (db) => {
+				const result = await work(db);
+				if (!first) return result;
+				first = false;
+				throw new DOMException('cut by the browser', 'UnknownError');
+			});
+	}
+
+	test('is answered as saved, is there once, and is told', async () => {
+		const store = await newDevice(ADA);
+		const { build, seam } = await openBuild(store);
+		const heard: unknown[] = [];
+		store.subscribe((notice) => heard.push(notice));
+		cutAfterFirst(store);
+		const [entry] = await appendEntries(store, build, [driven(seam, 1)]);
+		expect(entry).toMatchObject({ kind: 'holes.driven', seam, author: ADA });
+		expect((await kinds(store, build)).filter((kind) => kind === 'holes.driven')).toHaveLength(1);
+		expect(heard).toEqual([{ build, parts: [seam], appended: true }]);
+		expect((await foldedSeam(store, build, seam)).holes[0]?.state).toBe('driven');
+	});
+
+	test('is not confused with other content under its id', async () => {
+		const store = await newDevice(ADA);
+		const { build, seam } = await openBuild(store);
+		const id = store.newId();
+		await appendEntries(store, build, [{ ...driven(seam, 1), id }]);
+		expect(await codeOf(appendEntries(store, build, [{ ...driven(seam, 2), id }]))).toBe(
+			'device.store_lost'
+		);
+		const on = [build];
+		expect(await codeOf(appendEntries(store, build, [{ ...driven(seam, 1), id, on }]))).toBe(
+			'device.store_lost'
+		);
+		expect(await appendEntries(store, build, [{ ...driven(seam, 1), id }])).toMatchObject([{ id }]);
+	});
+});
+
 describe('two connections to one store', () => {
 	test('appending at once get different numbers, and both see all summed', async () => {
 		const one = await newDevice(ADA);

@@ -12,7 +12,7 @@ import type { Body, Kind } from '$lib/logbook/kinds';
 import { start } from '$lib/logbook/chain';
 import { wallTime } from './clock';
 import { recount, settled, writing, type Change } from './counting';
-import { DeviceError, nameOf } from './errors';
+import { DeviceError } from './errors';
 import { quiet } from './handle';
 import type { BuildRow, Database, EntryRow, StoreName } from './schema';
 import type { DeviceStore } from './store';
@@ -63,11 +63,14 @@ export async function appendEntries(
 	try {
 		written = await store.handle.run(append);
 	} catch (error) {
+		// The first try may have been committed although its connection broke before saying so; whatever the second one
+		// then failed with. "Nothing was saved" would have the work logged twice.
+		const there = await readBack(store, build, named);
+		if (there) {
+			store.notices.send({ build, parts: [...new Set(there.map(partOf))], appended: true });
+			return there;
+		}
 		if (error instanceof DeviceError) throw error;
-		const there =
-			nameOf(error) === 'ConstraintError' ? await readBack(store, build, named) : undefined;
-		// The first try was committed although its connection broke before saying so.
-		if (there) return there;
 		throw new DeviceError('device.store_lost', { cause: error });
 	}
 	store.cache.set(build, written.changes - 1, written.changes, written.lines);
@@ -190,11 +193,15 @@ function withEnrolment(
 /** @throws DeviceError when the draft is no valid line */
 function written(
 	draft: Draft & { id: string },
-	envelope: Pick<Entry, 'build' | 'n' | 'device' | 'author' | 'at'>
+	{ build, n, device, author, at }: Pick<Entry, 'build' | 'n' | 'device' | 'author' | 'at'>
 ): Sound {
 	const { id, kind, body, seam, assembly, on, when } = draft;
 	const reading = writeEntry({
-		...envelope,
+		build,
+		n,
+		device,
+		author,
+		at,
 		id,
 		kind,
 		v: 1,
@@ -226,19 +233,27 @@ function placeless({ entry, text, hash }: Sound): EntryRow {
 	};
 }
 
+/** The entries of these drafts, if each of them is on the disk and says the same; undefined otherwise, also unread. */
 async function readBack(
 	store: DeviceStore,
 	build: string,
-	drafts: readonly { readonly id: string }[]
+	drafts: readonly (Draft & { readonly id: string })[]
 ): Promise<Entry[] | undefined> {
-	const rows = await store.handle.run((db) =>
-		Promise.all(drafts.map(({ id }) => db.get('entries', [build, id])))
-	);
-	const entries: Entry[] = [];
-	for (const row of rows) {
-		const reading = row && readEntry(row.text);
-		if (!reading?.ok || reading.entry.author !== store.person) return undefined;
-		entries.push(reading.entry);
+	try {
+		const rows = await store.handle.run((db) =>
+			Promise.all(drafts.map(({ id }) => db.get('entries', [build, id])))
+		);
+		const entries: Entry[] = [];
+		for (const [i, row] of rows.entries()) {
+			const reading = row && readEntry(row.text);
+			if (!reading?.ok || reading.entry.author !== store.person) return undefined;
+			// Written once more with the number, device and time it has there: other content under this id is not it.
+			const again = written(drafts[i] as Draft & { id: string }, reading.entry);
+			if (again.text !== row?.text) return undefined;
+			entries.push(reading.entry);
+		}
+		return entries;
+	} catch {
+		return undefined;
 	}
-	return entries;
 }
