@@ -4,6 +4,7 @@ import { dirname, join } from 'node:path';
 import { ROOT } from '../../src/bin/prepare.js';
 import { bytes, type ImportBuilt } from './bytes';
 import { carry } from './carry';
+import { children } from './cpu';
 import { openOffline, readCold, seamToOpen, visit } from './open';
 import { push, type PushCase } from './push';
 import { machine, table, type Row } from './report';
@@ -50,12 +51,24 @@ const QUICK: Sizes = {
 	]
 };
 
-export async function bench(options: {
+interface Options {
 	readonly quick: boolean;
 	/** Only these parts: tap, carry (with open and the taps in a full store), push, bytes. */
 	readonly only: readonly string[];
 	readonly importBuilt: ImportBuilt;
-}): Promise<void> {
+}
+
+export async function bench(options: Options): Promise<void> {
+	try {
+		await run(options);
+	} catch (error) {
+		// Servers and browsers of a part that broke off.
+		for (const pid of children()) process.kill(pid);
+		throw error;
+	}
+}
+
+async function run(options: Options): Promise<void> {
 	const sizes = options.quick ? QUICK : FULL;
 	const wanted = (part: string) => options.only.length === 0 || options.only.includes(part);
 	const before = machine();

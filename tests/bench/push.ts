@@ -18,6 +18,7 @@ import {
 	type TestDevice,
 	type TestLine
 } from '../support/people';
+import { cpuOf, withPid } from './cpu';
 import { RawServer } from './raw';
 import { atLeast, atMost, ratioOf, spread, type Row } from './report';
 
@@ -51,20 +52,28 @@ interface Client {
 /** A server with one build, a crew and its devices. */
 class Crewed {
 	readonly server: TestServer;
+	readonly pid: number | undefined;
 	readonly clients: readonly Client[];
 	readonly build: string;
 	readonly #seam: string;
 	#cursor: PushAnswer['cursor'] | undefined;
 
-	private constructor(server: TestServer, clients: readonly Client[], build: string, seam: string) {
+	private constructor(
+		server: TestServer,
+		pid: number | undefined,
+		clients: readonly Client[],
+		build: string,
+		seam: string
+	) {
 		this.server = server;
+		this.pid = pid;
 		this.clients = clients;
 		this.build = build;
 		this.#seam = seam;
 	}
 
 	static async make(count: number): Promise<Crewed> {
-		const server = await TestServer.start({ LOG_LEVEL: 'info' });
+		const { of: server, pid } = await withPid(() => TestServer.start({ LOG_LEVEL: 'info' }));
 		const clients: Client[] = [];
 		for (let i = 0; i < count; i++) {
 			const caller = await Caller.registered(server, `crew${i}`);
@@ -75,7 +84,7 @@ class Crewed {
 		if (!owner) throw new Error('a crew has an owner');
 		const { build, opened, enrolled } = openBuild(owner.device);
 		const { seam, lines } = planSeam(owner.device, build, SEAM);
-		const crewed = new Crewed(server, clients, build, seam);
+		const crewed = new Crewed(server, pid, clients, build, seam);
 		await crewed.#send(owner, [opened, enrolled, ...lines]);
 		for (const other of others) {
 			const email = (await other.caller.person())?.email;
@@ -117,7 +126,7 @@ class Crewed {
 		const device = await makeDevice(owner.device.author);
 		const { build, opened, enrolled } = openBuild(device);
 		const { seam, lines } = planSeam(device, build, SEAM);
-		const other = new Crewed(this.server, [{ caller, device }], build, seam);
+		const other = new Crewed(this.server, this.pid, [{ caller, device }], build, seam);
 		await other.#send({ caller, device }, [opened, enrolled, ...lines]);
 		await other.fill(WARM);
 	}
@@ -190,12 +199,19 @@ interface Turn {
 	readonly pushes: readonly number[];
 	/** Ms from the first to the last answer. */
 	readonly all: number;
+	/** Ms of processor time of the server. */
+	readonly cpu: number;
 }
 
 /** Every client sends its pushes one after the other, all clients at once. */
-async function turn(agent: Agent, url: string, clients: readonly Prepared[][]): Promise<Turn> {
+async function turn(
+	agent: Agent,
+	{ url, pid }: { readonly url: string; readonly pid: number | undefined },
+	clients: readonly Prepared[][]
+): Promise<Turn> {
 	const times: number[] = [];
 	const answers: string[] = [];
+	const used = cpuOf(pid);
 	const started = performance.now();
 	await Promise.all(
 		clients.map(async (prepared) => {
@@ -209,7 +225,7 @@ async function turn(agent: Agent, url: string, clients: readonly Prepared[][]): 
 	const all = performance.now() - started;
 	for (const answer of answers)
 		if (/"status":"(?!accepted")/.test(answer)) throw new Error(answer.slice(0, 300));
-	return { pushes: times, all };
+	return { pushes: times, all, cpu: cpuOf(pid) - used };
 }
 
 function post(
@@ -290,15 +306,19 @@ async function measure(
 		full: Turn[];
 		rawFull: Turn[];
 	};
-	const pushTo = ({ server, build }: Crewed) => `${server.url}/api/builds/${build}/entries`;
+	const pushTo = ({ server, pid, build }: Crewed) => ({
+		url: `${server.url}/api/builds/${build}/entries`,
+		pid
+	});
+	const rawTo = ({ url, pid }: RawServer) => ({ url: `${url}/lines`, pid });
 	// The first turn warms up: compiled code, open connections, read sessions.
 	for (let i = -1; i < turns; i++) {
 		const [forEmpty, forFull] = [await empty.prepare(one), await full.prepare(one)];
 		const order = [
 			['empty', () => turn(agent, pushTo(empty), forEmpty)],
-			['raw', () => turn(agent, `${raw.url}/lines`, forEmpty)],
+			['raw', () => turn(agent, rawTo(raw), forEmpty)],
 			['full', () => turn(agent, pushTo(full), forFull)],
-			['rawFull', () => turn(agent, `${rawFull.url}/lines`, forFull)]
+			['rawFull', () => turn(agent, rawTo(rawFull), forFull)]
 		] as const;
 		for (const [name, run] of i % 2 === 0 ? order : order.toReversed()) {
 			// What one server still has to write after its answers is not to be paid by the next.
@@ -311,6 +331,10 @@ async function measure(
 	const perPush = (of: readonly Turn[]) => spread(of.flatMap((result) => result.pushes));
 	const perSecond = (of: readonly Turn[]) =>
 		spread(of.map((result) => (lines / result.all) * 1000));
+	const cpuPerPush = (of: readonly Turn[]) => {
+		const all = of.reduce((sum, { cpu }) => sum + cpu, 0);
+		return spread([all / (of.length * one.clients * one.pushes)]);
+	};
 	const rows: Row[] = [];
 	for (const [at, ours, floor] of [
 		[0, measured.empty, measured.raw],
@@ -335,6 +359,14 @@ async function measure(
 			tallybar: slow,
 			floor: floorSlow,
 			ratio: ratioOf(slow, floorSlow)
+		});
+		const [used, floorUsed] = [cpuPerPush(ours), cpuPerPush(floor)];
+		rows.push({
+			name: `${name}: processor time of one push`,
+			unit: 'ms',
+			tallybar: used,
+			floor: floorUsed,
+			ratio: ratioOf(used, floorUsed)
 		});
 	}
 	const [at0, later] = [perPush(measured.empty), perPush(measured.full)];

@@ -9,11 +9,13 @@ import { ROOT } from '../../src/bin/prepare.js';
 
 export class RawServer {
 	readonly url: string;
+	readonly pid: number | undefined;
 	readonly #child: ChildProcess;
 	readonly #folder: string;
 
 	private constructor(port: number, child: ChildProcess, folder: string) {
 		this.url = `http://localhost:${port}`;
+		this.pid = child.pid;
 		this.#child = child;
 		this.#folder = folder;
 	}
