@@ -2,14 +2,18 @@ import 'fake-indexeddb/auto';
 import { afterAll, beforeAll, describe, expect, test } from 'vitest';
 import { directTransport } from '../../../tests/support/direct-transport';
 import { TestLogServer } from '../../../tests/support/log-server';
+import { next } from '$lib/logbook/chain';
+import { writeEntry, type Entry } from '$lib/logbook/entry';
+import { makeSeal } from '$lib/logbook/seal';
 import { appendEntries } from './append';
 import { exportBuild, importExport, readExport } from './exchange';
-import { newestLines, outboxRows, summaries } from './read';
+import { foldedBuild, linesWithFindings, newestLines, outboxRows, summaries } from './read';
 import { syncRound } from './round';
 import { closeStore, deleteStore, unsent } from './sign-out';
 import { lastPerson, personsHere } from './registry';
 import { openStore, type DeviceStore } from './store';
 import { driven, newDevice, openBuild } from './testing';
+import type { Transport } from './transport';
 
 interface FileText {
 	lines: string[];
@@ -170,6 +174,102 @@ describe('importing', () => {
 			'file.damaged'
 		);
 		expect(await texts(bob.store, build)).toEqual(before);
+	});
+});
+
+describe('a line in the name of another, sealed by the device of who forged it', () => {
+	/** Puts a line by `author` among those this store has written itself. */
+	async function forge(store: DeviceStore, build: string, author: string, made: Forged) {
+		const n = ((await store.handle.run((db) => db.get('builds', build)))?.maxN ?? 0) + 1;
+		const { device } = store;
+		const at = '2026-03-14T20:15:00.000+01:00';
+		const reading = writeEntry({
+			id: store.newId(),
+			build,
+			v: 1,
+			on: [],
+			n,
+			device,
+			author,
+			at,
+			...made
+		} as Entry);
+		if (!reading.ok) throw new Error(reading.code);
+		const { entry, text, hash } = reading;
+		const { id, kind } = entry;
+		await store.handle.run((db) =>
+			db.put('entries', {
+				build,
+				id,
+				part: entry.seam ?? '',
+				n,
+				kind,
+				device,
+				author,
+				text,
+				hash,
+				sound: 1
+			})
+		);
+		return { entry, text, hash };
+	}
+	type Forged = Pick<Entry, 'kind' | 'body'> & { readonly seam?: string };
+	const holes = (seam: string): Forged => ({
+		kind: 'holes.driven',
+		seam,
+		body: { holes: [{ from: 9, to: 20 }], method: 'driven' }
+	});
+
+	test('is not taken from a file', async () => {
+		const { ada, bob, build, seam } = await handOver();
+		const before = await texts(ada.store, build);
+		await forge(bob.store, build, ada.store.person, holes(seam));
+		const { text } = await exportBuild(bob.store, build);
+		expect(await codeOf(importExport(ada.store, text))).toBe('file.damaged');
+		expect(await texts(ada.store, build)).toEqual(before);
+	});
+
+	test('is not taken from a file either when it hands the build over, also by a device of its own', async () => {
+		const { ada, bob, build } = await handOver();
+		const over: Forged = {
+			kind: 'owner.changed',
+			body: { from: ada.store.person, to: bob.store.person }
+		};
+		await bob.store.mintDevice();
+		const { publicKey } = bob.store.keys;
+		const enrolment: Forged = { kind: 'device.enrolled', body: { key: publicKey } };
+		await forge(bob.store, build, ada.store.person, enrolment);
+		await forge(bob.store, build, ada.store.person, over);
+		const { text } = await exportBuild(bob.store, build);
+		expect(await codeOf(importExport(ada.store, text))).toBe('file.damaged');
+		expect((await foldedBuild(ada.store, build)).crew.get(bob.store.person)).toBe('builder');
+	});
+
+	test('is kept and reported when the server has it in its log', async () => {
+		const { ada, bob, build, seam } = await handOver();
+		const { entry, text, hash } = await forge(bob.store, build, ada.store.person, holes(seam));
+		const seal = await makeSeal(bob.store.keys.pair.privateKey, build, bob.store.device, [hash]);
+		// An operator who has not got Ada's key.
+		const pull: Transport['pull'] = async (...call) => {
+			const answer = await ada.transport.pull(...call);
+			const received = 5;
+			const place = next(answer.next, { seq: answer.next.seq + 1, received, hash });
+			return {
+				...answer,
+				entries: [
+					...answer.entries,
+					{ seq: place.seq, received, text, seal: answer.seals.length }
+				],
+				seals: [...answer.seals, { ...seal, hashes: [...seal.hashes] }],
+				next: { ...place, signature: answer.next.signature },
+				head: place.seq
+			};
+		};
+		await syncRound(ada.store, { ...ada.transport, pull });
+		expect(await linesWithFindings(ada.store, build)).toMatchObject([
+			{ id: entry.id, finding: 'device.other_person' }
+		]);
+		expect(await summaries(ada.store, build)).toMatchObject([{ driven: 15 }]);
 	});
 });
 

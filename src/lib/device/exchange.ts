@@ -7,6 +7,7 @@ import { canonicalText, hashText, NotCanonical, type Json } from '$lib/logbook/b
 import { byOrder, partOf, readEntry, type Envelope } from '$lib/logbook/entry';
 import { foldBuild } from '$lib/logbook/fold/build';
 import { lineOf, type Line } from '$lib/logbook/fold/line';
+import { traits } from '$lib/logbook/kinds';
 import { Id, Signature } from '$lib/logbook/scalars';
 import {
 	makeSeal,
@@ -25,7 +26,7 @@ import { quiet } from './handle';
 import { sealOwn } from './outgoing';
 import { within, type EntryRow, type OutboxRow, type OutboxState } from './schema';
 import type { DeviceStore } from './store';
-import { Keys } from './verify';
+import { isInOwnName, Keys } from './verify';
 
 /** How the name of an exported file ends. */
 const EXPORT_SUFFIX = '.tallybar.json';
@@ -168,6 +169,8 @@ export interface ReadExport {
 	readonly lines: readonly ImportedLine[];
 	/** Keys by device, as the enrolments in the file say. */
 	readonly keys: ReadonlyMap<string, string>;
+	/** Whose devices they are, as those enrolments say. */
+	readonly persons: ReadonlyMap<string, string>;
 	readonly states: ReadonlyMap<
 		string,
 		{ readonly state: string; readonly code?: string | undefined }
@@ -187,11 +190,14 @@ export async function readExport(text: string): Promise<ReadExport> {
 		throw new DeviceError('file.damaged', { detail: 'a line stands twice' });
 
 	const keys = new Map<string, string>();
+	const persons = new Map<string, string>();
 	for (const { line } of lines) {
 		const { entry } = line;
-		if (entry?.kind === 'device.enrolled' && !keys.has(entry.device))
-			keys.set(entry.device, entry.body.key);
+		if (entry?.kind !== 'device.enrolled' || keys.has(entry.device)) continue;
+		keys.set(entry.device, entry.body.key);
+		persons.set(entry.device, entry.author);
 	}
+	const servers = serversIn(lines);
 	const imported = new Keys();
 	// A device that never wrote here has no enrolment in the file; its key then only guards against accidents.
 	const key = await imported.get(keys.get(file.device) ?? file.key);
@@ -212,14 +218,36 @@ export async function readExport(text: string): Promise<ReadExport> {
 		person: file.person,
 		exportedAt: file.exportedAt,
 		keys,
+		persons,
 		states: new Map(file.states.map(({ id, state, code }) => [id, { state, code }])),
 		unsealed: file.unsealed.length,
 		lines: lines.map(({ row, line }) => {
 			const seal = covering.get(`${row.device} ${row.hash}`);
 			if (!seal) throw new DeviceError('file.seal_missing', { detail: row.id });
+			const server = servers.has(row.device) ? row.device : undefined;
+			if (!isInOwnName(row, line.envelope.v, persons.get(row.device), server))
+				throw new DeviceError('file.damaged', { detail: `${row.id} is in the name of another` });
 			return { row, line, seal };
 		})
 	};
+}
+
+/**
+ * Which devices may be a server's: they wrote what only servers write, and nothing else. A file cannot prove more; a
+ * store that knows the server of the build takes such lines from no other device.
+ */
+function serversIn(lines: readonly { readonly row: EntryRow; readonly line: Line }[]): Set<string> {
+	const servers = new Set<string>();
+	const others = new Set<string>();
+	for (const { row, line } of lines)
+		if (isServerOnly(line)) servers.add(row.device);
+		else if (row.kind !== 'device.enrolled') others.add(row.device);
+	for (const device of others) servers.delete(device);
+	return servers;
+}
+
+function isServerOnly({ envelope: { kind, v } }: Line): boolean {
+	return traits(kind, v)?.writer === 'server';
 }
 
 /** The file and, for its seal, the canonical text of everything in it but the lines and the seal. */
@@ -292,18 +320,25 @@ export async function importExport(store: DeviceStore, text: string): Promise<Im
 		);
 		return settled(tx, async () => {
 			const row = (await tx.objectStore('builds').get(build)) ?? newcomer(store, file);
-			for (const { device, key } of await tx.objectStore('devices').getAll(within(build)))
-				if ((file.keys.get(device) ?? key) !== key)
-					throw new DeviceError('file.damaged', { detail: 'a device has another key in the log' });
+			for (const { device, key, person } of await tx.objectStore('devices').getAll(within(build)))
+				if (
+					(file.keys.get(device) ?? key) !== key ||
+					(device !== row.server && (file.persons.get(device) ?? person) !== person)
+				)
+					throw new DeviceError('file.damaged', {
+						detail: 'a device has another key or person in the log'
+					});
 			const here = await Promise.all(
 				file.lines.map(async ({ row: { id } }) => tx.objectStore('entries').get([build, id]))
 			);
 			const parts = new Map<string, undefined>();
 			const now = store.env.now();
 			let added = 0;
-			file.lines.forEach(({ row: line, seal }, i) => {
+			file.lines.forEach(({ row: line, line: read, seal }, i) => {
 				// Same id, other bytes: ours stays; the server decides when both reach it.
 				if (here[i]) return;
+				if (isServerOnly(read) && line.device !== (row.server ?? line.device))
+					throw new DeviceError('file.damaged', { detail: `${line.id} is not the server's` });
 				added++;
 				parts.set(line.part, undefined);
 				row.maxN = Math.max(row.maxN, line.n);

@@ -56,6 +56,8 @@ export type LineFinding =
 	| 'device.other_key'
 	/** The device that wrote it is not enrolled. */
 	| 'device.unknown'
+	/** The device that wrote it is enrolled for somebody else than its author, or is not the server's for a line only that writes. */
+	| 'device.other_person'
 	/** Another line of this id was here, with other bytes; it is in `conflict`. */
 	| 'entry.id_conflict';
 

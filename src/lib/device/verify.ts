@@ -6,6 +6,7 @@ import { hashText } from '$lib/logbook/bytes';
 import { next, placeStatement, type Place } from '$lib/logbook/chain';
 import { partOf, readEntry, type Envelope } from '$lib/logbook/entry';
 import { lineOf, type Line } from '$lib/logbook/fold/line';
+import { traits } from '$lib/logbook/kinds';
 import { readPublicKey, sealName, verify, verifySeal, type Seal } from '$lib/logbook/seal';
 import type { PullAnswer, PulledLine, SignedPlace } from '$lib/logbook/wire';
 import { BrokenHistory } from './faults';
@@ -89,8 +90,14 @@ export async function checkPage(
 	if (answer.entries.length === 0 && answer.head > end.seq)
 		throw new BrokenHistory('lines were announced and not sent');
 
-	const seals = await checkSeals(build, lines, answer.seals, enrolled, keys);
 	const server = await serverOf(row, enrolled, end, keys);
+	const seals = await checkSeals(build, lines, answer.seals, enrolled, keys);
+	for (const { row: entryRow, line } of lines) {
+		const person = enrolled.get(entryRow.device)?.person;
+		// Once recognised it stays the server's, also where a place lacks its signature.
+		if (!isInOwnName(entryRow, line?.envelope.v, person, row.server ?? server))
+			entryRow.finding ??= 'device.other_person';
+	}
 	return {
 		from,
 		lines,
@@ -174,6 +181,22 @@ function sealFinding(
 ): LineFinding | undefined {
 	if (!enrolled.has(row.device)) return 'device.unknown';
 	return sealedBy === row.device && hashes.has(row.hash) && holds ? undefined : 'seal.broken';
+}
+
+/**
+ * May a device write this line in its author's name? A person's device in its person's only, whatever its seal is worth:
+ * else a member of the crew logs, signs and hands over in the name of another. The server's device in the name of
+ * whoever acted, but only what nobody else may write, and its own enrolment.
+ */
+export function isInOwnName(
+	{ kind, device, author }: Pick<EntryRow, 'kind' | 'device' | 'author'>,
+	v: number | undefined,
+	person: string | undefined,
+	server: string | undefined
+): boolean {
+	const serverOnly = v !== undefined && traits(kind, v)?.writer === 'server';
+	if (device === server) return serverOnly || kind === 'device.enrolled';
+	return !serverOnly && (person === undefined || person === author);
 }
 
 /**
