@@ -49,6 +49,12 @@ export async function up(db: Kysely<any>): Promise<void> {
 		// Finds a copied profile: two lines of one device with one n. Not unique, both lines are true.
 		await sql`create index entry_device_n on entry (build, device, n)`.execute(trx);
 
+		// The few crew lines of a build, read when another is written: who is in the crew is folded from all of
+		// them together. A query uses it only with this very list of kinds.
+		await sql`
+			create index entry_crew on entry (build)
+			where kind in ('crew.joined', 'crew.role', 'crew.left', 'owner.changed')`.execute(trx);
+
 		// Who is in the crew now, folded from the crew lines; `left` keeps former members known, for what
 		// they still send is kept for the owner while a stranger's is not.
 		await sql`

@@ -49,19 +49,53 @@ describe('the fold of a build', () => {
 
 	it('knows the crew as the log has it', () => {
 		const { scribe, fold } = scene();
-		scribe.write('crew.joined', { person: ANA, role: 'owner' });
-		scribe.write('crew.joined', { person: JO, role: 'builder' });
-		scribe.write('crew.role', { person: JO, role: 'inspector' });
+		const ana = scribe.write('crew.joined', { person: ANA, role: 'owner' });
+		const jo = scribe.write('crew.joined', { person: JO, role: 'builder' });
+		const role = scribe.write('crew.role', { person: JO, role: 'inspector' }, { on: [jo] });
 		expect(fold().crew).toEqual(
 			new Map([
 				[ANA, 'owner'],
 				[JO, 'inspector']
 			])
 		);
-		scribe.write('crew.left', { person: JO });
+		const left = scribe.write('crew.left', { person: JO }, { on: [role] });
 		expect(fold().crew.get(JO)).toBe('left');
-		scribe.write('owner.changed', { from: ANA, to: JO });
+		scribe.write('owner.changed', { from: ANA, to: JO }, { on: [ana, left] });
 		expect([...fold().crew.values()]).toEqual(['builder', 'owner']);
+	});
+
+	it('takes who opened it for the owner until a crew line speaks of them', () => {
+		const { scribe, fold } = scene();
+		expect(fold().crew).toEqual(new Map([[ANA, 'owner']]));
+		scribe.write('crew.joined', { person: ANA, role: 'builder' });
+		scribe.write('crew.joined', { person: JO, role: 'owner' });
+		expect(fold().crew.get(ANA)).toBe('builder');
+	});
+
+	it('keeps somebody out when one of two crew lines that do not know of each other says so, else in the lesser role', () => {
+		const { scribe, fold } = scene();
+		const jo = scribe.write('crew.joined', { person: JO, role: 'builder' });
+		const a = scribe.write('crew.role', { person: JO, role: 'inspector' }, { on: [jo] });
+		const b = scribe.write('crew.role', { person: JO, role: 'follower' }, { on: [jo] });
+		expect(fold().crew.get(JO)).toBe('follower');
+		const left = scribe.write('crew.left', { person: JO }, { on: [jo] });
+		expect(fold().crew.get(JO)).toBe('left');
+		scribe.write('crew.joined', { person: JO, role: 'inspector' }, { on: [a, b, left] });
+		expect(fold().crew.get(JO)).toBe('inspector');
+	});
+
+	it('is still the last owner’s when it was handed to somebody who is out', () => {
+		const { scribe, fold } = scene();
+		const ana = scribe.write('crew.joined', { person: ANA, role: 'owner' });
+		const jo = scribe.write('crew.joined', { person: JO, role: 'builder' });
+		scribe.write('owner.changed', { from: ANA, to: JO }, { on: [ana, jo] });
+		scribe.write('crew.left', { person: JO }, { on: [jo] });
+		expect(fold().crew).toEqual(
+			new Map([
+				[ANA, 'owner'],
+				[JO, 'left']
+			])
+		);
 	});
 
 	it('holds a device for whom it was enrolled first', () => {

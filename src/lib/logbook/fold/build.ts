@@ -2,6 +2,7 @@
 import { isKind, inOrder, type Line } from './line';
 import type { Role } from '../kinds';
 import type { Entry } from '../entry';
+import { crewOf } from './crew';
 import { fieldsOf, members, type Field } from './fields';
 import { headsOf } from './heads';
 import { strikesOf, type Strikes } from './strikes';
@@ -62,7 +63,9 @@ export function foldBuild(unordered: readonly Line[]): Build {
 		lines.filter((line) => isKind(line, 'build.opened', 'build.described')),
 		isStruck
 	);
-	const crew = new Map<string, Role | 'left'>();
+	const crew = new Map(
+		[...crewOf(lines)].map(([person, { role, left }]) => [person, left ? 'left' : role] as const)
+	);
 	const devices = new Map<string, { person: string; key: string; line: string }>();
 	const named = new Map<string, string>();
 	const setups: Entry<'setup.made'>[] = [];
@@ -71,17 +74,6 @@ export function foldBuild(unordered: readonly Line[]): Build {
 	for (const line of live) {
 		const { entry } = line;
 		switch (entry?.kind) {
-			case 'crew.joined':
-			case 'crew.role':
-				crew.set(entry.body.person, entry.body.role);
-				break;
-			case 'crew.left':
-				crew.set(entry.body.person, 'left');
-				break;
-			case 'owner.changed':
-				crew.set(entry.body.from, 'builder');
-				crew.set(entry.body.to, 'owner');
-				break;
 			case 'device.enrolled':
 				// The first enrolment of a device holds: a later one could only try to take it over.
 				if (!devices.has(entry.device))

@@ -145,6 +145,7 @@ async function act(
 		const lines = decide(journal);
 		if (typeof lines === 'string') return lines;
 		if (lines.length > 0) {
+			await journal.loadCrew();
 			await journal.lookUpDevices([server.key.device]);
 			writeServerLines(server.key, journal, actor, lines);
 			await journal.flush();

@@ -9,6 +9,10 @@ import type { Json } from '$lib/logbook/bytes';
 import { next, start } from '$lib/logbook/chain';
 import type { Place } from '$lib/logbook/chain';
 import type { Entry } from '$lib/logbook/entry';
+import { crewHeads, crewOf, isCrewEntry, spokenOf } from '$lib/logbook/fold/crew';
+import type { CrewState } from '$lib/logbook/fold/crew';
+import { inOrder } from '$lib/logbook/fold/line';
+import type { Line as FoldLine } from '$lib/logbook/fold/line';
 import { N_LEAP } from '$lib/logbook/judge';
 import type { Known, Log } from '$lib/logbook/judge';
 import type { Role } from '$lib/logbook/kinds';
@@ -20,10 +24,7 @@ import { readOffered } from './offered';
 import type { Line } from './offered';
 import type { LogTables } from './tables';
 
-export interface Member {
-	readonly role: Role;
-	readonly left: boolean;
-}
+export type Member = CrewState;
 interface Device {
 	readonly person: string;
 	readonly key: string;
@@ -53,6 +54,10 @@ export class Journal implements Log {
 	#name: string;
 
 	readonly #members = new Map<string, Member>();
+	/** The crew lines and the one that opened the build, once loaded; the crew is folded from all of them. */
+	#crew: FoldLine[] | undefined;
+	/** Was a crew line added since the crew was last folded? */
+	#crewMoved = false;
 	readonly #devices = new Map<string, Device>();
 	readonly #accepted = new Map<string, AcceptedLine>();
 	readonly #held = new Map<string, HeldLine>();
@@ -114,6 +119,7 @@ export class Journal implements Log {
 	static async begin(trx: Trx, build: string): Promise<Journal> {
 		const place = start(build);
 		const journal = new Journal(trx, build, place, 0, '');
+		journal.#crew = [];
 		await trx
 			.insertInto('build')
 			.values({
@@ -201,6 +207,42 @@ export class Journal implements Log {
 				return { line: id, key: entry.body.key };
 		}
 		return undefined;
+	}
+
+	/** Must come before a crew line is added: the crew is folded from all of them, not from the last. */
+	async loadCrew(): Promise<void> {
+		if (this.#crew) return;
+		// The kinds as in the index entry_crew, word for word: else the whole log would be read.
+		const { rows } = await sql<{ text: string }>`
+			select text from entry where build = ${this.build}
+				and kind in ('crew.joined', 'crew.role', 'crew.left', 'owner.changed')
+			union all
+			select text from entry where build = ${this.build} and id = ${this.build}
+		`.execute(this.#trx);
+		this.#crew = rows.flatMap(({ text }) => {
+			const { entry } = readOffered(text);
+			return entry ? [foldLine(entry)] : [];
+		});
+	}
+
+	/** The ids a new line of this kind stands on; `before` is written with it and not added yet. */
+	crewHeads(entry: Entry, before: readonly Entry[]): string[] {
+		if (!isCrewEntry(entry)) return [];
+		if (!this.#crew) throw new Error('the crew was not loaded');
+		return crewHeads(inOrder([...this.#crew, ...before.map(foldLine)]), spokenOf(entry));
+	}
+
+	/** The crew as its lines have it now. */
+	#membersNow(): ReadonlyMap<string, Member> {
+		if (!this.#crewMoved) return this.#members;
+		this.#crewMoved = false;
+		for (const [person, { role, left }] of crewOf(inOrder(this.#crew ?? []))) {
+			const before = this.#members.get(person);
+			if (before?.role === role && before.left === left) continue;
+			this.#members.set(person, { role, left });
+			this.#changed.members.add(person);
+		}
+		return this.#members;
 	}
 
 	/** Held lines and lines in quarantine, whole. What this transaction already changed is not read over. */
@@ -295,10 +337,10 @@ export class Journal implements Log {
 	// ---- what judge() asks ---------------------------------------------------------------------------------
 
 	member(person: string): Member | undefined {
-		return this.#members.get(person);
+		return this.#membersNow().get(person);
 	}
 	role(person: string): Role | 'left' | undefined {
-		const member = this.#members.get(person);
+		const member = this.member(person);
 		return member?.left ? 'left' : member?.role;
 	}
 	device(device: string): Device | undefined {
@@ -324,7 +366,8 @@ export class Journal implements Log {
 	}
 	ownersInCrew(): number {
 		let owners = 0;
-		for (const { role, left } of this.#members.values()) if (role === 'owner' && !left) owners++;
+		for (const { role, left } of this.#membersNow().values())
+			if (role === 'owner' && !left) owners++;
 		return owners;
 	}
 
@@ -395,30 +438,17 @@ export class Journal implements Log {
 		switch (entry.kind) {
 			case 'build.opened':
 				this.#name = entry.body.name;
-				this.#setMember(entry.author, { role: 'owner', left: false });
+				this.#addToCrew(entry);
 				return;
 			case 'build.described':
 				if (entry.body.name !== undefined) this.#name = entry.body.name;
 				return;
 			case 'crew.joined':
-				this.#setMember(entry.body.person, { role: entry.body.role, left: false });
+			case 'crew.role':
+			case 'crew.left':
+			case 'owner.changed':
+				this.#addToCrew(entry);
 				return;
-			case 'crew.role': {
-				const member = this.#members.get(entry.body.person);
-				if (member) this.#setMember(entry.body.person, { ...member, role: entry.body.role });
-				return;
-			}
-			case 'crew.left': {
-				const member = this.#members.get(entry.body.person);
-				if (member) this.#setMember(entry.body.person, { ...member, left: true });
-				return;
-			}
-			case 'owner.changed': {
-				const from = this.#members.get(entry.body.from);
-				if (from) this.#setMember(entry.body.from, { ...from, role: 'builder' });
-				this.#setMember(entry.body.to, { role: 'owner', left: false });
-				return;
-			}
 			case 'device.enrolled':
 				if (this.#devices.has(entry.device)) return;
 				this.#devices.set(entry.device, { person: entry.author, key: entry.body.key });
@@ -432,9 +462,10 @@ export class Journal implements Log {
 		}
 	}
 
-	#setMember(person: string, member: Member): void {
-		this.#members.set(person, member);
-		this.#changed.members.add(person);
+	#addToCrew(entry: Entry): void {
+		if (!this.#crew) throw new Error('the crew was not loaded');
+		this.#crew.push(foldLine(entry));
+		this.#crewMoved = true;
 	}
 
 	/** Keeps a line outside the history until `waitsFor` has arrived. */
@@ -541,8 +572,9 @@ export class Journal implements Log {
 				from json_each(${JSON.stringify(rows)})
 			`.execute(trx);
 		}
+		const members = this.#membersNow();
 		for (const person of changed.members) {
-			const { role, left } = this.#members.get(person) as Member;
+			const { role, left } = members.get(person) as Member;
 			const values = { role, left: left ? (1 as const) : (0 as const) };
 			await trx
 				.insertInto('member')
@@ -613,6 +645,10 @@ export class Journal implements Log {
 				.where('seq', '=', seq)
 				.execute();
 	}
+}
+
+function foldLine(entry: Entry): FoldLine {
+	return { id: entry.id, envelope: entry, entry };
 }
 
 /** The canonical text of an entry without its body. */

@@ -1,5 +1,6 @@
 import type { Place } from '$lib/logbook/chain';
 import { MOST_BYTES } from '$lib/logbook/entry';
+import { isCrewEntry } from '$lib/logbook/fold/crew';
 import { N_LEAP } from '$lib/logbook/judge';
 import type { RefusalCode } from '$lib/logbook/refusals';
 import type { PushAnswer, PushRequest, PushResult } from '$lib/logbook/wire';
@@ -148,6 +149,8 @@ async function takeBatch(
 		devices.push(entry.device);
 	}
 	await journal.lookUp(wanted);
+	if (lines.some(({ entry }) => isCrewEntry(entry) || entry?.kind === 'build.opened'))
+		await journal.loadCrew();
 	await journal.lookUpDevices(devices);
 
 	const taking = new Taking(server, journal, batch, actor, request.device);

@@ -1,5 +1,8 @@
 import { afterEach, beforeEach, describe, expect, it } from 'vitest';
 import { hashText } from '$lib/logbook/bytes';
+import { readEntry } from '$lib/logbook/entry';
+import { foldBuild } from '$lib/logbook/fold/build';
+import { lineOf } from '$lib/logbook/fold/line';
 import type { SealMessage } from '$lib/logbook/wire';
 import type { z } from 'zod';
 import {
@@ -142,6 +145,30 @@ describe('after the server was restored from a copy of its database', () => {
 		).toEqual(['accepted', 'accepted']);
 	});
 
+	it('an old joining that was lost does not bring back whom the owner removed since', async () => {
+		const owner = await server.makePerson('Olga');
+		const mal = await server.makePerson('Mal');
+		const { build } = await startBuild(owner);
+		await server.backUp();
+		await server.admit(owner, build, mal, 'builder');
+		const { seals, lines } = await memoryOf(mal.author, build);
+		await server.restore();
+		await server.admit(owner, build, mal, 'builder');
+		await server.push(mal, build, [enrol(mal, build)]);
+		await removeMember(server, owner.author, build, mal.author);
+		expect(await server.offer(mal, build, lines.slice(-1), { seals })).toEqual(['accepted']);
+		const note = writeLine(mal, build, 'note.written', { text: 'x' }, { n: 60 });
+		expect(await server.offer(mal, build, [note])).toEqual(['refused crew.removed']);
+		expect(await foldedCrew(owner.author, build)).toEqual({
+			[owner.author]: 'owner',
+			[mal.author]: 'left'
+		});
+		// And back in, by a line that knows of all of these.
+		await server.admit(owner, build, mal, 'inspector');
+		expect(await server.offer(mal, build, [note])).toEqual(['accepted']);
+		expect(await foldedCrew(owner.author, build)).toMatchObject({ [mal.author]: 'inspector' });
+	});
+
 	it('a build that is gone altogether is made again by whoever has it, for its author', async () => {
 		const crew = await server.makeCrew();
 		const { build, owner, builder } = crew;
@@ -208,6 +235,13 @@ async function proofWithHashes(person: string, build: string) {
 			])
 		}
 	};
+}
+
+/** The crew as every phone folds it. */
+async function foldedCrew(person: string, build: string) {
+	const { entries } = await server.pullAll(person, build);
+	const lines = entries.flatMap(({ text }) => lineOf(readEntry(text)) ?? []);
+	return Object.fromEntries(foldBuild(lines).crew);
 }
 
 async function startBuild(owner: Crew['owner']) {

@@ -13,7 +13,7 @@ export type ServerLine = { [K in ServerKind]: { kind: K; body: Body<K> } }[Serve
 /**
  * Writes lines into the log as the device of the build that the server is, in the name of the person who acted.
  * In a build that does not know this device yet (a new one, or one whose server lost its key) it enrols itself first:
- * without its key nobody could check these lines.
+ * without its key nobody could check these lines. The crew must be loaded.
  */
 export function writeServerLines(
 	key: ServerKey,
@@ -26,20 +26,23 @@ export function writeServerLines(
 		kind: 'device.enrolled',
 		body: { key: key.publicKey, name: 'server' }
 	};
-	const written = (enrolled ? lines : [enrolment, ...lines]).map((line, i) =>
-		write({
+	const written: Line[] = [];
+	for (const line of enrolled ? lines : [enrolment, ...lines]) {
+		const entry = {
 			id: newId(),
 			build: journal.build,
 			kind: line.kind,
 			v: 1,
 			on: [],
-			n: journal.maxN + 1 + i,
+			n: journal.maxN + 1 + written.length,
 			device: key.device,
 			author,
 			at: wallTime(journal.received),
 			body: line.body
-		} as Entry)
-	);
+		} as Entry;
+		const before = written.map((other) => other.entry);
+		written.push(write({ ...entry, on: journal.crewHeads(entry, before) } as Entry));
+	}
 	const seal = journal.keepSeal(
 		key.makeSeal(
 			journal.build,
