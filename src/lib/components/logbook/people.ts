@@ -15,7 +15,7 @@ export function handsOf(
 ): Hand[] {
 	const members = crew
 		.filter(({ left, role }) => left !== true && role !== 'follower')
-		.map(({ person, name }) => ({ id: person, name }));
+		.map(({ person, name }) => ({ id: person, name: name || 'somebody who left' }));
 	const own = members.some(({ id }) => id === self.person)
 		? []
 		: [{ id: self.person, name: self.name || 'me' }];
@@ -30,7 +30,8 @@ export function nameOf(
 	self?: { readonly person: string; readonly name: string }
 ): string {
 	const member = crew.find(({ person }) => person === id);
-	if (member) return member.name;
+	// An account that is gone has no name any more.
+	if (member) return member.name || 'somebody who left';
 	const helper = build.named.get(id);
 	if (helper !== undefined) return helper;
 	if (self && self.person === id) return self.name || 'you';

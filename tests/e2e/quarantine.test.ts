@@ -1,0 +1,60 @@
+import { Caller, PASSWORD } from '../support/caller';
+import { driveHoles, enrol, makeDevice, openBuild, planSeam, sealedPush } from '../support/people';
+import { expect, test } from './server';
+
+test('what a follower drove waits for the owner, who sees it in words and decides; offline the list says so', async ({
+	page,
+	context,
+	server
+}) => {
+	const owner = await Caller.registered(server, 'ana');
+	const follower = await Caller.registered(server, 'jo');
+	const [ana, jo] = await Promise.all([owner.person(), follower.person()]);
+	const device = await makeDevice(ana?.id);
+	const { build, opened, enrolled } = openBuild(device);
+	const { seam, lines } = planSeam(device, build, 20);
+	await owner.push(
+		ana?.id ?? '',
+		build,
+		await sealedPush(device, build, [opened, enrolled, ...lines])
+	);
+	await owner.api(ana?.id ?? '', `builds/${build}/crew`, {
+		email: 'jo@example.org',
+		role: 'follower'
+	});
+	const theirs = await makeDevice(jo?.id);
+	theirs.n = 100;
+	await follower.push(
+		jo?.id ?? '',
+		build,
+		await sealedPush(theirs, build, [
+			enrol(theirs, build),
+			driveHoles(theirs, build, seam, 1, 5),
+			driveHoles(theirs, build, seam, 6, 7)
+		])
+	);
+
+	await page.goto(`${server.url}/sign-in`);
+	await page.getByRole('textbox', { name: 'E-mail address' }).fill('ana@example.org');
+	await page.getByRole('textbox', { name: 'Password' }).fill(PASSWORD);
+	await page.getByRole('button', { name: 'Sign in' }).click();
+	await page.waitForURL('**/builds');
+	await page.goto(`${server.url}/builds/${build}/not-accepted`);
+
+	const first = page.getByRole('listitem').filter({ hasText: 'Rear spar: driven 1–5' });
+	await expect(first).toContainText('written by jo, brought by jo');
+	await expect(first).toContainText('Your role in this build does not include this');
+	await first.getByRole('button', { name: 'Accept' }).click();
+	await expect(first).toContainText('Accepted. It is in the log.');
+	const second = page.getByRole('listitem').filter({ hasText: 'Rear spar: driven 6–7' });
+	await second.getByRole('button', { name: 'Discard' }).click();
+	await expect(second).toContainText('Discarded.');
+	await expect(page.getByText('Nothing waits for your decision.')).toBeVisible();
+
+	await page.goto(`${server.url}/builds/${build}/logbook`);
+	await expect(page.getByRole('link', { name: /driven 1–5/ })).toBeVisible();
+
+	await context.setOffline(true);
+	await page.goto(`${server.url}/builds/${build}/not-accepted`);
+	await expect(page.getByText('This list is on the server and needs a network.')).toBeVisible();
+});
