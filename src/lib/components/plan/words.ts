@@ -130,7 +130,7 @@ const OPTIONS_OF: Readonly<Record<string, Options>> = {
 	head: HEAD_OPTIONS
 };
 
-export function stackWords(stack: readonly Sheet[]): string {
+function stackWords(stack: readonly Sheet[]): string {
 	return stack
 		.map(({ thickness, material, prep, part }) =>
 			[formatLength(thickness), material, prepWords(prep), part && `(${part})`]
