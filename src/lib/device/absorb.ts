@@ -1,10 +1,11 @@
 /** Storing what the server sent: pages of its history, and what it said of the lines it was offered. */
 import { start, type Place } from '$lib/logbook/chain';
 import { canonicalText, type Json } from '$lib/logbook/bytes';
+import { N_LEAP } from '$lib/logbook/judge';
 import { isRefusalCode, refusal } from '$lib/logbook/refusals';
 import { PAGE, type CrewMember, type PushResult, type SignedPlace } from '$lib/logbook/wire';
 import type { Line } from '$lib/logbook/fold/line';
-import { newBuildRow } from './append';
+import { highestTame, newBuildRow } from './append';
 import { recount, settled, writing, type Change, type Writing } from './counting';
 import { quiet } from './handle';
 import {
@@ -73,7 +74,11 @@ export async function absorbPage(
 			if (lines.size > 0) row.changes++;
 			row.cursor = page.next;
 			row.head = Math.max(page.head, page.next.seq);
-			row.maxN = Math.max(row.maxN, page.maxN, ...page.lines.map((line) => line.row.n));
+			// The server's word, never the lines' own: one that counts wildly would take this device, and all it writes, along.
+			row.maxN = Math.max(
+				page.maxN,
+				row.maxN > page.maxN + N_LEAP ? await highestTame(tx, build) : row.maxN
+			);
 			row.known = true;
 			if (page.server !== undefined) row.server = page.server;
 			quiet(tx.objectStore('builds').put(row));
@@ -92,6 +97,7 @@ function isKnown(row: BuildRow, page: CheckedPage): boolean {
 		row.known &&
 		row.head === page.head &&
 		row.maxN >= page.maxN &&
+		row.maxN <= page.maxN + N_LEAP &&
 		row.server === page.server
 	);
 }
@@ -165,9 +171,15 @@ async function forget(
 	by: string
 ): Promise<string | undefined> {
 	const row = await tx.objectStore('entries').get([build, id]);
-	if (!row || row.withdrawn) return undefined;
+	if (!row) return undefined;
+	if (row.withdrawn) {
+		quiet(tx.objectStore('outbox').delete([build, row.n, id]));
+		return undefined;
+	}
 	const envelope = without(JSON.parse(row.text) as Record<string, Json>, 'body');
 	const kept = without(row, 'sound');
+	// Without its text it can never be offered: a row left in the outbox would be due for ever.
+	quiet(tx.objectStore('outbox').delete([build, row.n, id]));
 	quiet(
 		tx.objectStore('entries').put({
 			...kept,
@@ -245,6 +257,13 @@ export async function absorbResults(
 	if (told) tell(store, build, told);
 }
 
+/** A line that has a place meanwhile (another tab pulled it) has nothing to do in the outbox any more. */
+async function isUnplaced(tx: Writing, build: string, id: string): Promise<boolean> {
+	const row = await tx.objectStore('builds').get(build);
+	const entry = await tx.objectStore('entries').get([build, id]);
+	return !!row && !!entry && (entry.seq === undefined || entry.history !== row.history);
+}
+
 function rowFor(offered: Pick<OutboxRow, 'build' | 'n' | 'id'>, at: number): OutboxRow {
 	const { build, n, id } = offered;
 	return { build, n, id, state: 'waiting', tries: 0, at, carried: true };
@@ -294,13 +313,19 @@ export async function parkLine(
 	row: Pick<OutboxRow, 'build' | 'n' | 'id'>,
 	code: string
 ): Promise<void> {
-	await changeRows(store, row.build, [row], (there, now) => ({
-		...there,
-		state: 'parked',
-		code,
-		tries: there.tries + 1,
-		due: now + HOUR
-	}));
+	await changeRows(
+		store,
+		row.build,
+		[row],
+		(there, now) => ({
+			...there,
+			state: 'parked',
+			code,
+			tries: there.tries + 1,
+			due: now + HOUR
+		}),
+		true
+	);
 }
 
 /** Counts a failed offer of a single line. @returns how often it has failed in a row */
@@ -309,10 +334,16 @@ export async function countFailure(
 	row: Pick<OutboxRow, 'build' | 'n' | 'id'>
 ): Promise<number> {
 	let tries = 0;
-	await changeRows(store, row.build, [row], (there) => ({
-		...there,
-		tries: (tries = there.tries + 1)
-	}));
+	await changeRows(
+		store,
+		row.build,
+		[row],
+		(there) => ({
+			...there,
+			tries: (tries = there.tries + 1)
+		}),
+		true
+	);
 	return tries;
 }
 
@@ -347,19 +378,26 @@ export async function offerAgain(
 	);
 }
 
+/**
+ * @param make a row where there is none: a line offered again after a restore has none, and one the server always fails
+ *   on would never be put aside, and keep back all that comes after it
+ */
 async function changeRows(
 	store: DeviceStore,
 	build: string,
 	rows: readonly Pick<OutboxRow, 'n' | 'id'>[],
-	change: (there: OutboxRow, now: number) => OutboxRow
+	change: (there: OutboxRow, now: number) => OutboxRow,
+	make = false
 ): Promise<void> {
 	if (rows.length === 0) return;
 	const now = store.env.now();
 	await store.handle.run(async (db) => {
-		const tx = writing(db, ['outbox'], 'relaxed');
+		const tx = writing(db, ['builds', 'entries', 'outbox'], 'relaxed');
 		await settled(tx, async () => {
 			for (const { n, id } of rows) {
-				const there = await tx.objectStore('outbox').get([build, n, id]);
+				const there =
+					(await tx.objectStore('outbox').get([build, n, id])) ??
+					(make && (await isUnplaced(tx, build, id)) ? rowFor({ build, n, id }, now) : undefined);
 				if (there) quiet(tx.objectStore('outbox').put(change(there, now)));
 			}
 		});

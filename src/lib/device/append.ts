@@ -10,11 +10,12 @@ import {
 import { lineOf, type Line } from '$lib/logbook/fold/line';
 import type { Body, Kind } from '$lib/logbook/kinds';
 import { start } from '$lib/logbook/chain';
+import { N_LEAP } from '$lib/logbook/judge';
 import { wallTime } from './clock';
-import { recount, settled, writing, type Change } from './counting';
+import { recount, settled, writing, type Change, type Writing } from './counting';
 import { DeviceError } from './errors';
 import { quiet } from './handle';
-import type { BuildRow, Database, EntryRow, StoreName } from './schema';
+import { within, type BuildRow, type Database, type EntryRow, type StoreName } from './schema';
 import type { DeviceStore } from './store';
 
 type DraftOf<K extends Kind> = K extends Kind
@@ -35,12 +36,15 @@ export type Draft<K extends Kind = Kind> = DraftOf<K>;
 
 type Sound = Extract<Reading, { ok: true }>;
 
+/** The highest number a line may have. */
+const MOST_N = 2 ** 52;
+
 const STORES: StoreName[] = ['builds', 'entries', 'outbox', 'summaries'];
 
 /**
  * Adds lines to the log of a build and puts them in line for the server, all or none. When it returns they are on the
  * device's disk (one transaction of durability strict, committed). Their numbers follow each other from the highest
- * known; the first lines of this device in a build are preceded by its `device.enrolled`. A `build.opened` as first
+ * known that is no leap; the first lines of this device in a build are preceded by its `device.enrolled`. A `build.opened` as first
  * draft opens the build of its id.
  *
  * @returns the entries of the drafts, in their order
@@ -114,8 +118,16 @@ async function appendOnce(
 		const outbox = tx.objectStore('outbox');
 		const added = new Map<string, Line[]>();
 		const own: Entry[] = [];
+		// A counter that ran away can number nothing any more: the lines go on from the highest that did not.
+		if (row.maxN > MOST_N - all.length) row.maxN = await highestTame(tx, build);
 		for (const draft of all) {
-			const reading = written(draft, { build, n: ++row.maxN, device, author: store.person, at });
+			const reading = written(draft, {
+				build,
+				n: await numberFor(tx, row, draft),
+				device,
+				author: store.person,
+				at
+			});
 			const { entry } = reading;
 			const part = partOf(entry);
 			quiet(entries.add(placeless(reading)));
@@ -149,6 +161,32 @@ async function appendOnce(
 		quiet(tx.objectStore('builds').put(row));
 		return { entries: own, parts: [...added.keys()], changes: row.changes, lines };
 	});
+}
+
+/**
+ * The next number. What stands on a line or strikes it comes after it, or is refused: so a line that stands on one
+ * numbered wildly is numbered beyond that, but does not take the counter, and with it everybody, there.
+ */
+async function numberFor(tx: Writing, row: BuildRow, draft: Draft): Promise<number> {
+	const named = new Set(draft.on);
+	if ('entry' in draft.body && typeof draft.body.entry === 'string') named.add(draft.body.entry);
+	let beyond = row.maxN;
+	const entries = tx.objectStore('entries');
+	for (const there of await Promise.all([...named].map((id) => entries.get([row.build, id]))))
+		if (there && there.n > beyond) beyond = there.n;
+	if (beyond <= row.maxN + N_LEAP) return (row.maxN = beyond + 1);
+	// Nothing comes after the last number there is. Saved all the same; what to do about it the server says.
+	return beyond < MOST_N ? beyond + 1 : ++row.maxN;
+}
+
+/** The highest number of a build's lines that is not a leap beyond those before it. */
+export async function highestTame(tx: Writing, build: string): Promise<number> {
+	let tame = 0;
+	for (const { n } of await tx.objectStore('entries').index('byN').getAll(within(build))) {
+		if (n > tame + N_LEAP) break;
+		tame = n;
+	}
+	return tame;
 }
 
 /** A row for a build that begins with this line. */

@@ -7,6 +7,7 @@ import { canonicalText, hashText, NotCanonical, type Json } from '$lib/logbook/b
 import { byOrder, partOf, readEntry, type Envelope } from '$lib/logbook/entry';
 import { foldBuild } from '$lib/logbook/fold/build';
 import { lineOf, type Line } from '$lib/logbook/fold/line';
+import { N_LEAP } from '$lib/logbook/judge';
 import { traits } from '$lib/logbook/kinds';
 import { Id, Signature } from '$lib/logbook/scalars';
 import {
@@ -341,7 +342,8 @@ export async function importExport(store: DeviceStore, text: string): Promise<Im
 					throw new DeviceError('file.damaged', { detail: `${line.id} is not the server's` });
 				added++;
 				parts.set(line.part, undefined);
-				row.maxN = Math.max(row.maxN, line.n);
+				// The lines come in order of n, so only one that leaps away from all before it is left out.
+				if (line.n <= row.maxN + N_LEAP) row.maxN = Math.max(row.maxN, line.n);
 				const name = sealName(seal);
 				const outbox = carriedRow(line, file.states.get(line.id), now);
 				const excluded = outbox.state !== 'waiting' && ({ excluded: 1 } as const);

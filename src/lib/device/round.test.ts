@@ -2,7 +2,9 @@ import 'fake-indexeddb/auto';
 import { afterAll, beforeAll, beforeEach, describe, expect, test } from 'vitest';
 import { directTransport, removeFromCrew } from '../../../tests/support/direct-transport';
 import { TestLogServer } from '../../../tests/support/log-server';
+import type { Entry } from '$lib/logbook/entry';
 import { appendEntries } from './append';
+import { exportBuild, importExport } from './exchange';
 import { foldedSeam, linesWithFindings, newestLines, oneLine, outboxRows, summaries } from './read';
 import { syncRound } from './round';
 import { statusOfBuilds } from './loop';
@@ -342,3 +344,123 @@ test('thousands of lines go out in batches and come back in pages, in the same s
 	const waypoints = await fresh.store.handle.run((db) => db.getAll('waypoints'));
 	expect(waypoints.map(({ seq }) => seq)).toEqual([1000, 1306]);
 }, 60_000);
+
+describe('a line that is numbered wildly', () => {
+	/** Bob, whose counter ran away after he had enrolled, drives hole 1. */
+	async function wild(counter: number) {
+		const ada = await phone();
+		const bob = await phone();
+		const { build, seam } = await openBuild(ada.store);
+		await round(ada);
+		await admit(ada, build, bob, 'builder');
+		await round(bob);
+		await appendEntries(bob.store, build, [{ kind: 'note.written', body: { text: 'hello' } }]);
+		await round(bob);
+		await bob.store.handle.run(async (db) => {
+			const row = await db.get('builds', build);
+			if (row) await db.put('builds', { ...row, maxN: counter });
+		});
+		const [line] = await appendEntries(bob.store, build, [driven(seam, 1)]);
+		expect(line?.n).toBe(counter + 1);
+		return { ada, bob, build, seam, line: line as Entry };
+	}
+
+	test('and accepted by the owner takes nobody else along, only what stands on it', async () => {
+		for (const counter of [5_000_000, 2 ** 52 - 1]) {
+			const { ada, bob, build, seam, line } = await wild(counter);
+			await round(bob);
+			expect(await ada.transport.decide(build, [line.id], 'accept')).toMatchObject([
+				{ status: 'accepted' }
+			]);
+			await round(ada);
+			await round(bob);
+			for (const one of [ada, bob]) {
+				const [next] = await appendEntries(one.store, build, [driven(seam, 2)]);
+				expect(next?.n).toBeLessThan(100);
+				await round(one);
+				expect(await states(one, build)).toEqual([]);
+			}
+			const on = [line.id];
+			const [above, after] = await appendEntries(ada.store, build, [
+				{ ...driven(seam, 1), on },
+				driven(seam, 3)
+			]);
+			expect(after?.n).toBeLessThan(100);
+			if (counter < 2 ** 52 - 1) expect(above?.n).toBe(line.n + 1);
+		}
+	}, 30_000);
+
+	test('and comes in a file takes nobody along either', async () => {
+		const { ada, bob, build, seam } = await wild(2 ** 52 - 1);
+		await importExport(ada.store, (await exportBuild(bob.store, build)).text);
+		const [next] = await appendEntries(ada.store, build, [driven(seam, 2)]);
+		expect(next?.n).toBeLessThan(100);
+		// Nor does it keep the phone whose counter it is from writing.
+		await expect(appendEntries(bob.store, build, [driven(seam, 2)])).resolves.toHaveLength(1);
+	});
+});
+
+describe('after the server was restored', () => {
+	async function crew() {
+		const ada = await phone();
+		const bob = await phone();
+		const { build, seam } = await openBuild(ada.store);
+		await round(ada);
+		await admit(ada, build, bob, 'builder');
+		await round(bob);
+		await appendEntries(bob.store, build, [{ kind: 'note.written', body: { text: 'hello' } }]);
+		await round(bob);
+		await round(ada);
+		await server.backUp();
+		return { ada, bob, build, seam };
+	}
+
+	test('a line it always fails on does not keep back those offered again after it', async () => {
+		const { ada, bob, build, seam } = await crew();
+		const six = Array.from({ length: 6 }, (_, i) => driven(seam, i + 1));
+		const lines = await appendEntries(bob.store, build, six);
+		await round(bob);
+		await round(ada);
+		await server.restore();
+		const poison = `"id":"${lines[0]?.id ?? ''}"`;
+		const push: Transport['push'] = (of, request) =>
+			request.entries.some((text) => text.includes(poison))
+				? Promise.reject(new Unreachable('server', 500))
+				: ada.transport.push(of, request);
+		// Bob's phone is gone; Ada's has everything.
+		for (let i = 0; i < 6; i++)
+			await round({ ...ada, transport: { ...ada.transport, push } }, { tryNow: true });
+		const left = (await outboxRows(ada.store, build)).map(({ id, state }) => [id, state]);
+		expect(left).toEqual([[lines[0]?.id, 'parked']]);
+		const fresh = await another(ada);
+		await round(fresh);
+		expect(await summaries(fresh.store, build)).toMatchObject([{ driven: 5 }]);
+	});
+
+	test('a note that was withdrawn meanwhile does not wait for ever', async () => {
+		const { ada, bob, build } = await crew();
+		const text = 'names somebody';
+		const [note] = await appendEntries(bob.store, build, [
+			{ kind: 'note.written', body: { text } }
+		]);
+		// Acknowledged, and not pulled back.
+		let pushed = false;
+		const push: Transport['push'] = (...call) => {
+			pushed = true;
+			return bob.transport.push(...call);
+		};
+		const pull: Transport['pull'] = (...call) =>
+			pushed ? Promise.reject(new Unreachable('network')) : bob.transport.pull(...call);
+		await round({ ...bob, transport: { ...bob.transport, push, pull } });
+		expect(await states(bob, build)).toEqual(['acknowledged']);
+		await round(ada);
+		await appendEntries(ada.store, build, [
+			{ kind: 'entry.withdrawn', body: { entry: note?.id ?? '', ground: 'law' } }
+		]);
+		await round(ada);
+		await server.restore();
+		for (const one of [ada, ada, bob, bob]) await round(one, { tryNow: true });
+		expect((await round(bob)).nextDue).toBeUndefined();
+		expect(await states(bob, build)).toEqual([]);
+	});
+});
