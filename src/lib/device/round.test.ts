@@ -366,7 +366,7 @@ describe('a line that is numbered wildly', () => {
 	}
 
 	test('and accepted by the owner takes nobody else along, only what stands on it', async () => {
-		for (const counter of [5_000_000, 2 ** 52 - 1]) {
+		for (const counter of [5_000_000, 2 ** 49]) {
 			const { ada, bob, build, seam, line } = await wild(counter);
 			await round(bob);
 			expect(await ada.transport.decide(build, [line.id], 'accept')).toMatchObject([
@@ -386,7 +386,7 @@ describe('a line that is numbered wildly', () => {
 				driven(seam, 3)
 			]);
 			expect(after?.n).toBeLessThan(100);
-			if (counter < 2 ** 52 - 1) expect(above?.n).toBe(line.n + 1);
+			expect(above?.n).toBe(line.n + 1);
 		}
 	}, 30_000);
 
@@ -463,4 +463,74 @@ describe('after the server was restored', () => {
 		expect((await round(bob)).nextDue).toBeUndefined();
 		expect(await states(bob, build)).toEqual([]);
 	});
+});
+
+describe('over a slow connection', () => {
+	test('a batch that does not get through in time is made smaller', async () => {
+		const ada = await phone();
+		const { build, seam } = await openBuild(ada.store, 300);
+		await round(ada);
+		const many = Array.from({ length: 180 }, (_, i) => driven(seam, i + 1));
+		await appendEntries(ada.store, build, many);
+		const sizes: number[] = [];
+		const push: Transport['push'] = (of, request) => {
+			sizes.push(request.entries.length);
+			return request.entries.length > 30
+				? Promise.reject(new Unreachable('timeout'))
+				: ada.transport.push(of, request);
+		};
+		await round({ ...ada, transport: { ...ada.transport, push } });
+		expect(await states(ada, build)).toEqual([]);
+		expect(sizes.slice(0, 4)).toEqual([180, 90, 45, 22]);
+	}, 30_000);
+
+	test('a page that does not come in time is asked for smaller, and larger again later', async () => {
+		const ada = await phone();
+		const { build, seam } = await openBuild(ada.store, 300);
+		const many = Array.from({ length: 180 }, (_, i) => driven(seam, i + 1));
+		await appendEntries(ada.store, build, many);
+		await round(ada);
+		const fresh = await another(ada);
+		const limits: number[] = [];
+		let carries = 100;
+		const pull: Transport['pull'] = (of, at, limit = 1000) => {
+			limits.push(limit);
+			return limit > carries
+				? Promise.reject(new Unreachable('timeout'))
+				: ada.transport.pull(of, at, limit);
+		};
+		const slow = { ...fresh, transport: { ...fresh.transport, pull } };
+		for (let i = 0; i < 5; i++) await round(slow);
+		expect(limits.slice(0, 5)).toEqual([1000, 500, 250, 125, 62]);
+		expect((await newestLines(fresh.store, build)).length).toBeGreaterThan(50);
+		carries = 1000;
+		for (let i = 0; i < 5; i++) await round(slow);
+		expect(limits.at(-1)).toBe(1000);
+		expect(await texts(fresh, build)).toEqual(await texts(ada, build));
+	}, 30_000);
+});
+
+test('a device that may not enrol goes on as a new one', async () => {
+	const ada = await phone();
+	const first = ada.store.device;
+	const { build } = await openBuild(ada.store);
+	const push: Transport['push'] = async (of, request) => {
+		const answer = await ada.transport.push(of, request);
+		const enrolment = request.entries.findIndex((text) => text.includes('"device.enrolled"'));
+		return {
+			...answer,
+			results: answer.results.map((result, i) =>
+				i === enrolment
+					? { id: result.id, status: 'refused' as const, code: 'device.enrolled_before' }
+					: result
+			)
+		};
+	};
+	await round({ ...ada, transport: { ...ada.transport, push } });
+	expect(ada.store.device).not.toBe(first);
+	expect(await ada.store.keysOf(first)).toBeDefined();
+	const next = await openBuild(ada.store);
+	await round(ada);
+	expect(await states(ada, next.build)).toEqual([]);
+	expect(build).not.toBe(next.build);
 });

@@ -5,7 +5,7 @@
  * right. So a round decides from the store alone, writes each step in one transaction, and never drops a line.
  */
 import { hashText } from '$lib/logbook/bytes';
-import { PAGE, type PushAnswer } from '$lib/logbook/wire';
+import { PAGE, type PullAnswer, type PushAnswer } from '$lib/logbook/wire';
 import {
 	absorbList,
 	absorbPage,
@@ -65,6 +65,24 @@ export interface RoundReport {
 /** Tries of a single line on which the server fails while it answers otherwise, before it is put aside. */
 const TRIES_ALONE = 3;
 const MOST_ASKED = 5000;
+
+/** An answer this fast leaves room for one twice as long before the transport gives up. */
+const QUICK = 4000;
+/** A page is never made shorter than this: what is slow then is not the page. */
+const LEAST_PULLED = 20;
+
+/** How much a connection carries before it times out: kept from round to round, or a slow one would never get through. */
+interface Pace {
+	push: number;
+	pull: number;
+}
+const paces = new WeakMap<Transport, Pace>();
+
+function paceOf(transport: Transport): Pace {
+	let pace = paces.get(transport);
+	if (!pace) paces.set(transport, (pace = { push: Infinity, pull: PAGE }));
+	return pace;
+}
 
 /** One round over all builds, or those named. Never throws: what went wrong is in the report. */
 export async function syncRound(
@@ -230,7 +248,18 @@ class BuildRound {
 
 	/** @returns true at the head */
 	async #pullPage(row: BuildRow): Promise<boolean> {
-		const answer = await this.#transport.pull(this.#build, row.cursor, PAGE);
+		const pace = paceOf(this.#transport);
+		const limit = pace.pull;
+		const asked = this.#store.env.now();
+		let answer: PullAnswer;
+		try {
+			answer = await this.#transport.pull(this.#build, row.cursor, limit);
+		} catch (error) {
+			// The next round asks for less; this one ends, or a dead connection would be waited for again and again.
+			if (isTimeout(error)) pace.pull = Math.max(LEAST_PULLED, Math.floor(limit / 2));
+			throw error;
+		}
+		if (this.#store.env.now() - asked < QUICK) pace.pull = Math.min(PAGE, limit * 2);
 		const known = await this.#store.handle.run((db) => db.getAll('devices', within(this.#build)));
 		const page = await checkPage(row, known, answer, this.#keys);
 		const stored = await absorbPage(this.#store, this.#build, page);
@@ -261,7 +290,8 @@ class BuildRound {
 	 */
 	async #offer(keys: readonly Key[], former?: FormerHistory): Promise<boolean> {
 		let pushed = false;
-		let most = Infinity;
+		const pace = paceOf(this.#transport);
+		let most = pace.push;
 		let at = 0;
 		while (at < keys.length) {
 			const rest = keys.slice(at);
@@ -273,15 +303,18 @@ class BuildRound {
 				at += Math.max(batch.taken, 1);
 				continue;
 			}
+			const offered = this.#store.env.now();
 			try {
 				await this.#pushBatch(batch);
 				pushed = true;
 				at += batch.taken;
-				most *= 2;
+				if (this.#store.env.now() - offered < QUICK) most *= 2;
+				pace.push = Math.max(pace.push, most);
 			} catch (error) {
 				if (!isForSmaller(error)) throw error;
 				if (batch.rows.length > 1) {
 					most = Math.floor(batch.rows.length / 2);
+					if (isTimeout(error)) pace.push = most;
 					continue;
 				}
 				const key = now[batch.taken - 1] as Key;
@@ -295,6 +328,8 @@ class BuildRound {
 	/** A single line the server fails on. @returns whether to go on with the next */
 	async #giveWay(key: Key, error: unknown, othersPassed: boolean): Promise<boolean> {
 		const tooLarge = statusOf(error) === 413;
+		// That others passed says little against this one when nothing was answered at all.
+		if (isTimeout(error)) othersPassed = false;
 		const tries = await countFailure(this.#store, key);
 		this.#fault = error;
 		// Nothing has passed: the server itself may be ill, and the line is not to blame at once.
@@ -335,7 +370,15 @@ class BuildRound {
 			result: results[i] as Outcome['result']
 		}));
 		await absorbResults(this.#store, this.#build, outcomes, answer.maxN);
-		if (answer.mint && batch.rows.some(({ device }) => device === this.#store.device))
+		const { device } = this.#store;
+		// Refused as a device that has another key or person elsewhere, it would be refused in every further build.
+		const spent = batch.rows.some(
+			(own, i) =>
+				own.device === device &&
+				own.kind === 'device.enrolled' &&
+				results[i]?.code === 'device.enrolled_before'
+		);
+		if (spent || (answer.mint && batch.rows.some((own) => own.device === device)))
 			await this.#store.mintDevice();
 		return answer;
 	}
@@ -414,8 +457,13 @@ function statusOf(error: unknown): number | undefined {
 	return error instanceof Refused || error instanceof Unreachable ? error.status : undefined;
 }
 
+function isTimeout(error: unknown): boolean {
+	return error instanceof Unreachable && error.reason === 'timeout';
+}
+
 /** May fewer lines at once fare better? A full disk or a server that is starting fares no better with one. */
 function isForSmaller(error: unknown): boolean {
+	if (isTimeout(error)) return true;
 	const status = statusOf(error);
 	if (status === 413) return true;
 	return status !== undefined && status >= 500 && status !== 503 && status !== 507;
