@@ -121,6 +121,8 @@ async function placeLines(
 	const added = new Map<string, Line[]>();
 	/** Parts in which a line that was here already changed what it counts for. */
 	const changed = new Set<string>();
+	/** Lines of this device whose id another has in the log. */
+	const replaced: EntryRow[] = [];
 	page.lines.forEach(({ row: incoming, line }, i) => {
 		const { part } = incoming;
 		const here = there[i];
@@ -135,16 +137,36 @@ async function placeLines(
 		}
 		if (here.hash === incoming.hash) {
 			if (here.excluded || incoming.withdrawn) changed.add(part);
+			const { conflict } = here;
+			if (conflict) {
+				// Pulled once more after a restore: what was ours under this id is nowhere else.
+				const finding = incoming.finding ?? 'entry.id_conflict';
+				quiet(entries.put({ ...incoming, finding, conflict }));
+				return;
+			}
 			quiet(entries.put(incoming));
 			quiet(tx.objectStore('outbox').delete([build, here.n, here.id]));
 			return;
 		}
 		// Another line has this id on the server: that one is in the log. Ours stays, visible and not counted.
 		changed.add(part).add(here.part);
-		const conflict = { text: here.text, hash: here.hash };
+		if (here.conflict?.hash === incoming.hash) {
+			// After a restore ours was the first there.
+			quiet(entries.put(incoming));
+			const { n } = JSON.parse(here.conflict.text) as { n: number };
+			quiet(tx.objectStore('outbox').delete([build, n, here.id]));
+			return;
+		}
+		const conflict = here.conflict ?? { text: here.text, hash: here.hash };
 		quiet(entries.put({ ...incoming, finding: incoming.finding ?? 'entry.id_conflict', conflict }));
-		quiet(tx.objectStore('outbox').delete([build, here.n, here.id]));
+		if (!here.conflict) replaced.push(here);
 	});
+	for (const { n, id } of replaced) {
+		const outbox = tx.objectStore('outbox');
+		const there = (await outbox.get([build, n, id])) ?? rowFor({ build, n, id }, store.env.now());
+		const kept = without(there, 'due');
+		quiet(outbox.put({ ...kept, state: 'refused', code: 'entry.id_conflict', replaced: true }));
+	}
 	for (const { line } of page.lines) {
 		if (line?.entry?.kind !== 'entry.withdrawn') continue;
 		const part = await forget(tx, build, line.entry.body.entry, line.id);
@@ -173,13 +195,13 @@ async function forget(
 	const row = await tx.objectStore('entries').get([build, id]);
 	if (!row) return undefined;
 	if (row.withdrawn) {
-		quiet(tx.objectStore('outbox').delete([build, row.n, id]));
+		if (!row.conflict) quiet(tx.objectStore('outbox').delete([build, row.n, id]));
 		return undefined;
 	}
 	const envelope = without(JSON.parse(row.text) as Record<string, Json>, 'body');
 	const kept = without(row, 'sound');
 	// Without its text it can never be offered: a row left in the outbox would be due for ever.
-	quiet(tx.objectStore('outbox').delete([build, row.n, id]));
+	if (!row.conflict) quiet(tx.objectStore('outbox').delete([build, row.n, id]));
 	quiet(
 		tx.objectStore('entries').put({
 			...kept,
@@ -238,6 +260,8 @@ export async function absorbResults(
 			);
 			for (const [i, { row: offered, result }] of outcomes.entries()) {
 				const [there, entry] = found[i] ?? [];
+				// What was offered is the log's line; the row is of the one it replaced here.
+				if (there?.replaced) continue;
 				// Came back in a pull of another tab meanwhile: that is the last word.
 				if (!entry || (entry.history === row.history && entry.seq !== undefined)) continue;
 				const after = settle(there ?? rowFor(offered, now), result, now);
@@ -398,7 +422,7 @@ async function changeRows(
 				const there =
 					(await tx.objectStore('outbox').get([build, n, id])) ??
 					(make && (await isUnplaced(tx, build, id)) ? rowFor({ build, n, id }, now) : undefined);
-				if (there) quiet(tx.objectStore('outbox').put(change(there, now)));
+				if (there && !there.replaced) quiet(tx.objectStore('outbox').put(change(there, now)));
 			}
 		});
 	});

@@ -256,10 +256,7 @@ describe('a line in the name of another, sealed by the device of who forged it',
 			const place = next(answer.next, { seq: answer.next.seq + 1, received, hash });
 			return {
 				...answer,
-				entries: [
-					...answer.entries,
-					{ seq: place.seq, received, text, seal: answer.seals.length }
-				],
+				entries: [...answer.entries, { seq: place.seq, received, text, seal: answer.seals.length }],
 				seals: [...answer.seals, { ...seal, hashes: [...seal.hashes] }],
 				next: { ...place, signature: answer.next.signature },
 				head: place.seq

@@ -49,7 +49,7 @@ const ExportFile = z.object({
 	seals: z.array(SealMessage),
 	/** For people: where the lines stood on their way to the server. */
 	states: z.array(z.object({ id: Id, state: z.string(), code: z.optional(z.string()) })),
-	/** Lines this device could not vouch for; not imported. */
+	/** Lines this device could not vouch for, and its own whose id another line has in the log; not imported. */
 	unsealed: z.array(z.string()),
 	/** Over the hashes of all lines in their order, then the hash of everything else in the file. */
 	seal: z.object({ signature: Signature })
@@ -88,6 +88,8 @@ export async function exportBuild(store: DeviceStore, build: string): Promise<Ex
 	const lines: EntryRow[] = [];
 	const unsealed: string[] = [];
 	for (const row of [...found.entries].sort(byOrder)) {
+		// To be read and written again; under an id that another line has it can never be taken in.
+		if (row.conflict) unsealed.push(row.conflict.text);
 		// Without its body a withdrawn line cannot be offered; who imports gets it with the next sync.
 		if (row.withdrawn) continue;
 		const seal = row.seal === undefined ? undefined : stored.get(row.seal);
@@ -118,11 +120,10 @@ export async function exportBuild(store: DeviceStore, build: string): Promise<Ex
 		person: store.person,
 		exportedAt: wallTime(store.env),
 		seals,
-		states: found.outbox.map(({ id, state, code }) => ({
-			id,
-			state,
-			...(code !== undefined && { code })
-		})),
+		// One whose id another line has in the log: said of that, it would not count where the file is imported.
+		states: found.outbox
+			.filter(({ replaced }) => !replaced)
+			.map(({ id, state, code }) => ({ id, state, ...(code !== undefined && { code }) })),
 		unsealed
 	};
 	const hashes = [...lines.map(({ hash }) => hash), hashText(canonicalText(rest))];

@@ -47,7 +47,7 @@ export async function dueRows(
 		return found.flat();
 	});
 	return rows
-		.filter((row) => all || isDue(row, now))
+		.filter((row) => !row.replaced && (all || isDue(row, now)))
 		.sort((a, b) => a.n - b.n || (a.id < b.id ? -1 : 1))
 		.map(({ n, id, state }) => ({ build, n, id, parked: state === 'parked' }));
 }
@@ -64,6 +64,7 @@ export async function nextDue(store: DeviceStore, build: string): Promise<number
 	});
 	let next: number | undefined;
 	for (const row of rows) {
+		if (row.replaced) continue;
 		const due = isDue(row, now) ? now : (row.due ?? now);
 		if (next === undefined || due < next) next = due;
 	}
@@ -205,7 +206,9 @@ export async function unplacedRows(
 		const row = await tx.objectStore('builds').get(build);
 		if (!row || row.lines === row.cursor.seq) return [];
 		const onTheWay = new Set(
-			(await tx.objectStore('outbox').getAllKeys(within(build))).map(([, , id]) => id)
+			(await tx.objectStore('outbox').getAll(within(build)))
+				.filter(({ replaced }) => !replaced)
+				.map(({ id }) => id)
 		);
 		const found: Pick<EntryRow, 'build' | 'n' | 'id'>[] = [];
 		for (const entry of await tx.objectStore('entries').index('byN').getAll(within(build))) {

@@ -8,6 +8,7 @@ import { exportBuild, importExport } from './exchange';
 import { foldedSeam, linesWithFindings, newestLines, oneLine, outboxRows, summaries } from './read';
 import { syncRound } from './round';
 import { statusOfBuilds } from './loop';
+import { deleteStore, unsent } from './sign-out';
 import type { DeviceStore } from './store';
 import { driven, newDevice, openBuild } from './testing';
 import { Refused, Unreachable, type Transport } from './transport';
@@ -533,4 +534,48 @@ test('a device that may not enrol goes on as a new one', async () => {
 	await round(ada);
 	expect(await states(ada, next.build)).toEqual([]);
 	expect(build).not.toBe(next.build);
+});
+
+describe('our line, when the log has another under its id', () => {
+	async function conflict(meanwhile = () => Promise.resolve()) {
+		const ada = await phone();
+		const bob = await phone();
+		const { build, seam } = await openBuild(ada.store);
+		await round(ada);
+		await admit(ada, build, bob, 'builder');
+		await round(bob);
+		await meanwhile();
+		const [mine] = await appendEntries(ada.store, build, [driven(seam, 1, 9)]);
+		await appendEntries(bob.store, build, [{ ...driven(seam, 15), id: mine?.id ?? '' }]);
+		await round(bob);
+		await round(ada);
+		return { ada, bob, build };
+	}
+	const ours = '"to":9';
+
+	test('is refused, unsent, in the export, and never offered again', async () => {
+		const { ada, build } = await conflict();
+		expect(await states(ada, build)).toEqual(['refused entry.id_conflict']);
+		expect(await unsent(ada.store)).toMatchObject({ refused: 1, total: 1 });
+		expect(await deleteStore(ada.store)).toMatchObject({ deleted: false });
+		const { text } = await exportBuild(ada.store, build);
+		expect((JSON.parse(text) as { unsealed: string[] }).unsealed.join()).toContain(ours);
+		const fresh = await another(ada);
+		await importExport(fresh.store, text);
+		expect(await summaries(fresh.store, build)).toMatchObject([{ driven: 1 }]);
+		expect((await round(ada, { tryNow: true })).nextDue).toBeUndefined();
+		expect(await states(ada, build)).toEqual(['refused entry.id_conflict']);
+	});
+
+	test('is still there after the server was restored and all was pulled once more', async () => {
+		const { ada, bob, build } = await conflict(() => server.backUp());
+		await server.restore();
+		for (const one of [ada, bob, ada, ada]) await round(one, { tryNow: true });
+		const found = await linesWithFindings(ada.store, build);
+		expect(found).toMatchObject([{ finding: 'entry.id_conflict' }]);
+		expect(found[0]?.conflict?.text).toContain(ours);
+		expect(await unsent(ada.store)).toMatchObject({ refused: 1, total: 1 });
+		expect(await summaries(bob.store, build)).toMatchObject([{ driven: 1 }]);
+		expect(await status(ada)).toMatchObject({ synced: true });
+	});
 });

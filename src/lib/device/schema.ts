@@ -110,6 +110,11 @@ export interface OutboxRow {
 	readonly at: number;
 	/** Brought by a file, not written here; goes out under the stored seal. */
 	readonly carried?: true;
+	/**
+	 * The log has another line under this id. Ours is in that row's `conflict`, the only copy there is: not offered any
+	 * more, but counted as unsent until the person has let it go.
+	 */
+	replaced?: true;
 }
 
 export interface SealRow {

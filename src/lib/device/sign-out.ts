@@ -3,7 +3,7 @@ import { deleteDB } from 'idb';
 import { settled, writing, type Writing } from './counting';
 import { quiet } from './handle';
 import { dismissPerson } from './registry';
-import { ALL_STORES, within, type OutboxState, type Transaction } from './schema';
+import { ALL_STORES, type OutboxState, type Transaction } from './schema';
 import { storeName, type DeviceStore } from './store';
 
 /** Lines that would be gone from here with the store and are not in the server's log. */
@@ -43,14 +43,16 @@ export async function unsent(store: DeviceStore): Promise<Unsent> {
 
 async function count(tx: Writing | Transaction): Promise<Unsent> {
 	const counts = { waiting: 0, held: 0, refused: 0, offeredAgain: 0 };
-	for (const { state } of await tx.objectStore('outbox').getAll()) {
+	const onTheWay = new Map<string, number>();
+	for (const { build, state, replaced } of await tx.objectStore('outbox').getAll()) {
+		if (!replaced) onTheWay.set(build, (onTheWay.get(build) ?? 0) + 1);
 		const as = COUNTED_AS[state];
 		if (as) counts[as]++;
 	}
 	for (const row of await tx.objectStore('builds').getAll()) {
 		if (!row.reoffer) continue;
-		const onTheWay = await tx.objectStore('outbox').count(within(row.build));
-		counts.offeredAgain += Math.max(0, row.lines - row.cursor.seq - onTheWay);
+		const offered = onTheWay.get(row.build) ?? 0;
+		counts.offeredAgain += Math.max(0, row.lines - row.cursor.seq - offered);
 	}
 	const { waiting, held, refused, offeredAgain } = counts;
 	return { ...counts, total: waiting + held + refused + offeredAgain };
