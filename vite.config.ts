@@ -54,6 +54,9 @@ export default defineConfig({
 	build: { sourcemap: false },
 	test: {
 		expect: { requireAssertions: true },
+		// Of a hanging test, not of a slow machine.
+		testTimeout: 30_000,
+		hookTimeout: 30_000,
 		projects: [
 			{
 				extends: true,

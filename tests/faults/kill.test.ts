@@ -37,7 +37,7 @@ async function makeBuild([owner, ...others]: Client[]): Promise<{ build: string;
 	if (!owner) throw new Error('a crew has an owner');
 	const { device, caller } = owner;
 	const { build, opened, enrolled } = openBuild(device);
-	const { seam, lines } = planSeam(device, build, 20_000);
+	const { seam, lines } = planSeam(device, build, 5000);
 	await caller.push(
 		device.author,
 		build,
@@ -69,7 +69,7 @@ test(`nothing acknowledged is lost or doubled when the server is killed ${KILLS}
 	const run = async ({ caller, device }: Client) => {
 		for (let batch = 0; !done; batch++) {
 			const lines: TestLine[] = Array.from({ length: 1 + (batch % 30) }, (_, i) =>
-				driveHoles(device, build, seam, 1 + ((batch * 31 + i) % 20_000))
+				driveHoles(device, build, seam, 1 + ((batch * 31 + i) % 5000))
 			);
 			for (const { id } of lines) attempted.add(id);
 			const request = await sealedPush(device, build, lines);

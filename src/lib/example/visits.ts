@@ -97,7 +97,7 @@ export function closeIfReady(shop: Shop, assembly: Assembly): void {
 				step: step.id,
 				...(step.number && {
 					value: {
-						text: pen.random.pick(['1.0', '1.2', '2.5']),
+						number: pen.random.pick(['1.0', '1.2', '2.5']),
 						unit: step.unit ?? 'psi'
 					}
 				})

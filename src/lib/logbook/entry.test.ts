@@ -96,7 +96,13 @@ describe('an entry', () => {
 			'entry.malformed'
 		],
 		['causes out of order', { on: [idOf(9), idOf(8)] }, 'entry.malformed'],
-		['a time that is none', { at: '2026-02-31T99:00:00.000+01:00' }, 'entry.malformed'],
+		['a day that is none', { at: '2026-02-30T20:00:00.000+01:00' }, 'entry.malformed'],
+		['a leap day that is none', { at: '2100-02-29T20:00:00.000+01:00' }, 'entry.malformed'],
+		['an hour that is none', { at: '2026-02-03T24:00:00.000+01:00' }, 'entry.malformed'],
+		['a year before aeroplanes', { at: '0000-01-01T01:00:00.000+01:00' }, 'entry.malformed'],
+		['a month that is none', { when: { is: 'about', date: '2026-13' } }, 'entry.malformed'],
+		['half a date', { when: { is: 'about', date: '2026-' } }, 'entry.malformed'],
+		['n beyond 2^52', { n: 2 ** 52 + 1 }, 'entry.malformed'],
 		['no seam', { seam: undefined }, 'entry.concerns'],
 		['an assembly beside the seam', { assembly: ASSEMBLY }, 'entry.concerns'],
 		['the id of its own seam', { id: seam }, 'entry.identity'],
@@ -106,6 +112,10 @@ describe('an entry', () => {
 			Object.entries({ ...good, ...change }).filter(([, value]) => value !== undefined)
 		);
 		expect(readEntry(canonicalText(cleaned as Json))).toMatchObject({ ok: false, code });
+	});
+
+	it.each(['2024-02-29', '2026-12', '2026'])('may be about %s', (date) => {
+		expect(said({ when: { is: 'about', date } })).toBe('ok');
 	});
 
 	it('keeps the envelope of a kind of a newer app, to be passed on unharmed', () => {

@@ -11,6 +11,9 @@ import { Id, WallTime, When, whole } from './scalars';
 /** `on` may not name more lines than this: a run over the longest seam stands on fewer. */
 const MOST_ON = 800;
 
+/** Leaves room above every n that can be written. */
+const MOST_N = 2 ** 52;
+
 const Envelope = z.strictObject({
 	id: Id,
 	build: Id,
@@ -23,7 +26,7 @@ const Envelope = z.strictObject({
 		// Ascending: one set of causes has one writing.
 		z.refine((ids) => ids.every((id, i) => i === 0 || (ids[i - 1] as string) < id))
 	),
-	n: whole(1, Number.MAX_SAFE_INTEGER),
+	n: whole(1, MOST_N),
 	device: Id,
 	author: Id,
 	at: WallTime,
@@ -101,9 +104,18 @@ function judgeForm(envelope: Envelope, text: string): Reading {
 	if (!body.success) return fault(body.error, envelope);
 	if (!concernsFit(envelope, kindTraits.concerns)) return { ok: false, code: 'entry.concerns', id };
 	if (!carriesItsIdentity(envelope)) return { ok: false, code: 'entry.identity', id };
+	// Holes of the plan are named without `by`: two names for one hole would count it twice in one line.
+	const entry = envelope as unknown as Entry;
+	if (holesOf(entry).some((range) => range.by !== undefined && range.by === envelope.seam))
+		return {
+			ok: false,
+			code: 'entry.malformed',
+			id,
+			detail: 'a hole of the plan named by its seam'
+		};
 	if (kind === 'entry.struck' && envelope.body['entry'] === envelope.body['keeps'])
 		return { ok: false, code: 'strike.settles_itself', id };
-	return { ok: true, entry: envelope as unknown as Entry, text, hash };
+	return { ok: true, entry, text, hash };
 }
 
 function fault(error: z.core.$ZodError, value: unknown): Reading {

@@ -9,6 +9,7 @@ import * as z from 'zod/mini';
 import {
 	Callout,
 	Day,
+	Decimal,
 	Hash,
 	HoleRange,
 	Holes,
@@ -258,6 +259,7 @@ const PrepDone = z.strictObject({
 	holes: optional(Holes),
 	primer: optional(text(60)),
 	batch: optional(text(60)),
+	by: optional(Person),
 	note: optional(text(400))
 });
 const SealantMixed = z.strictObject({
@@ -286,15 +288,27 @@ const Limits = z.strictObject({
 	heightLeast: optional(Length),
 	heightMost: optional(Length)
 });
+const measured = {
+	width: optional(Length),
+	height: optional(Length),
+	uncertainty: optional(Length)
+};
+const measuredOne = z.refine((found) => {
+	const { width, height } = found as { width?: unknown; height?: unknown };
+	return width !== undefined || height !== undefined;
+});
 /** What was found: by a go/no-go gauge, or measured with the tool's uncertainty. */
 const Found = z.discriminatedUnion('by', [
 	z.strictObject({ by: z.literal('gauge'), size: z.enum(['inside', 'small', 'big']) }),
-	z.strictObject({
-		by: z.enum(['caliper', 'photo']),
-		width: optional(Length),
-		height: optional(Length),
-		uncertainty: optional(Length)
-	}),
+	z.strictObject({ by: z.literal('caliper'), ...measured }).check(measuredOne),
+	z
+		.strictObject({
+			by: z.literal('photo'),
+			...measured,
+			/** The thing of known size beside the head, so that the picture can be measured again. */
+			scale: optional(z.strictObject({ what: text(60), size: Length }))
+		})
+		.check(measuredOne),
 	/** Pulled rivets have no shop head to measure. */
 	z.strictObject({ by: z.literal('eye'), seated: z.boolean() })
 ]);
@@ -319,6 +333,9 @@ const PracticeLogged = z.strictObject({
 	heads: Heads,
 	/** How many were drilled out and looked at. */
 	drilledOut: optional(whole(0, 60)),
+	setup: optional(Id),
+	/** Who held the other tool. */
+	partner: optional(Person),
 	task: optional(Id),
 	note: optional(text(400))
 });
@@ -326,6 +343,8 @@ const PracticeSet = z.strictObject({
 	person: Person,
 	callout: Callout,
 	heads: whole(1, 200),
+	stack: optional(Stack),
+	limits: optional(Limits),
 	note: optional(text(400))
 });
 
@@ -396,12 +415,16 @@ const DefectNoted = z.strictObject({
 	by: optional(Person),
 	note: optional(text(2000))
 });
+/** Who decided, when it was not the author, and on what. No free text: names can be withdrawn, lines cannot. */
+const decided = {
+	decidedBy: optional(Person),
+	basis: optional(z.enum(['drawings', 'manufacturer', 'authority', 'inspector', 'own_judgement']))
+};
 const DefectDecided = z.strictObject({
 	defect: Id,
 	holes: Holes,
 	decision: z.enum(['leave', 'drive_further', 'replace', 'replace_oversize', 'refer', 'no_defect']),
-	/** Who decided, when it was not the author: a name or an office. */
-	decidedBy: optional(text(80)),
+	...decided,
 	note: optional(text(2000))
 });
 const DefectFixed = z.strictObject({
@@ -410,7 +433,7 @@ const DefectFixed = z.strictObject({
 	action: z.enum(['left_as_is', 'driven_further', 'replaced', 'replaced_oversize', 'referred']),
 	/** The new rivet's `holes.driven`, which stands on a `holes.drilled_out`. */
 	rivet: optional(Id),
-	decidedBy: optional(text(80)),
+	...decided,
 	note: optional(text(2000))
 });
 
@@ -418,7 +441,12 @@ const DefectFixed = z.strictObject({
 
 const StepDone = z.strictObject({
 	step: Id,
-	value: optional(z.union([Quantity, z.strictObject({ text: text(200) })])),
+	value: optional(
+		z.union([
+			z.strictObject({ number: Decimal, unit: optional(text(16)) }),
+			z.strictObject({ text: text(200) })
+		])
+	),
 	note: optional(text(400))
 });
 const ClosingListed = z.strictObject({
@@ -444,6 +472,7 @@ const InspectionAsked = z.strictObject({
 	link: optional(z.strictObject({ seq: whole(0, Number.MAX_SAFE_INTEGER), link: Hash })),
 	note: optional(text(2000))
 });
+/** A look at what came since an earlier verdict stands on that verdict: the envelope's `on` names it. */
 const InspectionSigned = z.strictObject({
 	verdict: z.enum(['in_order', 'in_order_with_remarks', 'rework', 'not_seen']),
 	asked: optional(Id),
@@ -626,7 +655,7 @@ export const KINDS = {
 		concerns: 'build',
 		writer: 'builder',
 		strikable,
-		refers: ['task']
+		refers: ['task', 'setup']
 	},
 	'practice.set@1': { body: PracticeSet, concerns: 'build', writer: 'builder', strikable },
 	'holes.driven@1': {

@@ -123,8 +123,8 @@ export const REFUSALS = {
 		entry: 'later'
 	},
 	'device.carried': {
-		says: 'Somebody else brought this line, and the device that wrote it is new to the server. The owner can take it in after asking its author.',
-		entry: 'owner'
+		says: 'Somebody else brought this line, and the device that wrote it is not enrolled. Ask its author to sign in and import the file; then it is taken in, and what stands on it.',
+		entry: 'never'
 	},
 	'device.other_person': {
 		says: 'This device is enrolled for somebody else. Sign in again on this device.',

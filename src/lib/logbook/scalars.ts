@@ -26,18 +26,27 @@ export const text = (most: number) =>
 
 export const whole = (least: number, most: number) => z.int().check(z.gte(least), z.lte(most));
 
+/**
+ * A day that is in the calendar (Gregorian, 1900 to 2999). Written out, because `Date.parse` is lenient about days that
+ * are not, each engine in its own way: one phone would call malformed what another wrote and the server took.
+ */
+const DAY = /^(19|2\d)\d\d-(0[1-9]|1[0-2])-(0[1-9]|[12]\d|3[01])$/;
+const DAYS = [31, 28, 31, 30, 31, 30, 31, 31, 30, 31, 30, 31];
+function isDay(text: string): boolean {
+	if (!DAY.test(text)) return false;
+	const [year = 0, month = 0, day = 0] = text.split('-').map(Number);
+	const leap = year % 4 === 0 && (year % 100 !== 0 || year % 400 === 0);
+	return day <= (month === 2 && leap ? 29 : (DAYS[month - 1] ?? 0));
+}
+
 /** Wall time with offset and milliseconds, as the device's clock had it: `2026-12-01T21:40:05.120+01:00`. */
-const WALL_TIME = /^\d{4}-\d\d-\d\dT\d\d:\d\d:\d\d\.\d{3}[+-]\d\d:\d\d$/;
-export const WallTime = z.string().check(
-	z.regex(WALL_TIME),
-	z.refine((value) => !Number.isNaN(Date.parse(value)))
-);
+const TIME_OF_DAY = /^T([01]\d|2[0-3]):[0-5]\d:[0-5]\d\.\d{3}[+-](0\d|1[0-4]):[0-5]\d$/;
+export const WallTime = z
+	.string()
+	.check(z.refine((value) => isDay(value.slice(0, 10)) && TIME_OF_DAY.test(value.slice(10))));
 
 /** A calendar day. */
-export const Day = z.string().check(
-	z.regex(/^\d{4}-\d\d-\d\d$/),
-	z.refine((value) => !Number.isNaN(Date.parse(value)))
-);
+export const Day = z.string().check(z.refine(isDay));
 
 /** The time meant, where it is not the time of writing. */
 export const When = z.discriminatedUnion('is', [
@@ -45,7 +54,10 @@ export const When = z.discriminatedUnion('is', [
 	/** A day, a month or a year. */
 	z.strictObject({
 		is: z.literal('about'),
-		date: z.string().check(z.regex(/^\d{4}(-\d\d(-\d\d)?)?$/))
+		date: z.string().check(
+			z.regex(/^\d{4}(-\d\d(-\d\d)?)?$/),
+			z.refine((date) => isDay(date + '-01-01'.slice(date.length - 4)))
+		)
 	}),
 	/** Before this log began; `source` says where it was written down, e.g. "paper page 12". */
 	z.strictObject({ is: z.literal('before'), source: z.optional(text(120)) })
@@ -57,9 +69,12 @@ const nanometres = whole(0, 100_000_000_000);
 /** A length and the unit it was typed in: inch fraction, decimal inch, or millimetre. */
 export const Length = z.strictObject({ nm: nanometres, unit: z.enum(['frac', 'in', 'mm']) });
 
+/** A decimal number as typed. */
+export const Decimal = z.string().check(z.regex(/^-?\d{1,9}(\.\d{1,6})?$/));
+
 /** Pressure, weight, torque and the like, exactly as typed: a decimal number and its unit. */
 export const Quantity = z.strictObject({
-	text: z.string().check(z.regex(/^\d{1,9}(\.\d{1,6})?$/)),
+	text: Decimal,
 	unit: text(16)
 });
 
@@ -96,8 +111,8 @@ export const PlannedMethod = z.enum([
 	'bolt'
 ]);
 
-/** The most holes one line may add or name: twice the largest aeroplane. Bounds what a hostile line can cost. */
-export const MOST_HOLES = 20_000;
+/** The most holes of a seam, and of one line: ten times the longest row there is. Bounds what a hostile line can cost. */
+export const MOST_HOLES = 5000;
 const index = whole(1, MOST_HOLES);
 
 /**

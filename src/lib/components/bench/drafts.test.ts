@@ -71,13 +71,13 @@ describe('a defect', () => {
 		expect(fold().holes[2]).toMatchObject({ state: 'driven', defects: [] });
 	});
 
-	it('left as is names who decided, and is settled', () => {
+	it('left as is says on what it was decided, and is settled', () => {
 		const { scribe, seam, fold, write, newId } = scene();
 		scribe.drive(seam, 1, 5);
 		write([defectDraft(fold(), fold().holes.slice(0, 1), 'smile')]);
 		const [defect] = fold().defects as [Defect];
 		const holes = fold().holes.slice(0, 1);
-		const fix = { action: 'left_as_is', decidedBy: 'R. Vane' } as const;
+		const fix = { action: 'left_as_is', basis: 'drawings' } as const;
 		write(fixDrafts(fold(), defect, holes, fix, {}, newId));
 		expect(fold().defects[0]?.holes[0]?.state).toBe('settled');
 	});

@@ -66,7 +66,8 @@ type Action = Body<'defect.fixed'>['action'];
 
 export interface Fix {
 	readonly action: Action;
-	readonly decidedBy?: string;
+	/** On what it was decided. */
+	readonly basis?: NonNullable<Body<'defect.fixed'>['basis']>;
 	readonly note?: string;
 	/** The part number of the new rivet, where it is another. */
 	readonly callout?: string;
@@ -80,7 +81,7 @@ export function fixDrafts(
 	seam: Seam,
 	defect: Defect,
 	holes: readonly Hole[],
-	{ action, decidedBy, note, callout }: Fix,
+	{ action, basis, note, callout }: Fix,
 	how: HowDriven,
 	newId: () => string
 ): Draft[] {
@@ -91,7 +92,7 @@ export function fixDrafts(
 		defect: defect.id,
 		holes: ranges,
 		action,
-		...(decidedBy !== undefined && { decidedBy }),
+		...(basis !== undefined && { basis }),
 		...(note !== undefined && { note })
 	};
 	if (action !== 'replaced' && action !== 'replaced_oversize')

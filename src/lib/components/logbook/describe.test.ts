@@ -92,14 +92,14 @@ const SAID: { [K in Kind]: readonly [Body<K>, string] } = {
 	],
 	'defect.noted': [{ holes, fault: 'tipped', note: 'bar' }, 'defect 27–31: tipped · bar'],
 	'defect.decided': [
-		{ defect: idOf(9), holes, decision: 'leave', decidedBy: 'the maker' },
-		'decided on 27–31: leave as is · by the maker'
+		{ defect: idOf(9), holes, decision: 'leave', basis: 'manufacturer' },
+		'decided on 27–31: leave as is · by the manufacturer'
 	],
 	'defect.fixed': [
 		{ defect: idOf(9), holes, action: 'replaced_oversize' },
 		'defect 27–31: replaced, next size up'
 	],
-	'step.done': [{ step: idOf(9), value: { text: '25', unit: 'in-lb' } }, 'step done · 25 in-lb'],
+	'step.done': [{ step: idOf(9), value: { number: '25', unit: 'in-lb' } }, 'step done · 25 in-lb'],
 	'closing.listed': [
 		{
 			items: [

@@ -1,8 +1,10 @@
 /** A line of the log in words. Pure; every kind has a sentence, and a line this app cannot read says so. */
 import { holesOf, type Entry } from '$lib/logbook/entry';
 import type { Line } from '$lib/logbook/fold/line';
+import type { Body } from '$lib/logbook/kinds';
 import { counted } from '../frame/numbers';
 import {
+	BASIS_WORDS,
 	DECISION_WORDS,
 	FAULT_WORDS,
 	FIX_WORDS,
@@ -227,20 +229,21 @@ function describeEntry(entry: Entry, names: Names): string {
 		case 'defect.decided':
 			return join(
 				`decided on ${holes()}: ${DECISION_WORDS[entry.body.decision]}`,
-				entry.body.decidedBy && `by ${entry.body.decidedBy}`,
+				decidedBy(entry.body, names),
 				entry.body.note
 			);
 		case 'defect.fixed':
 			return join(
 				`defect ${holes()}: ${FIX_WORDS[entry.body.action]}`,
-				entry.body.decidedBy && `decided by ${entry.body.decidedBy}`,
+				decidedBy(entry.body, names),
 				entry.body.note
 			);
 		case 'step.done': {
 			const { value, note } = entry.body;
 			return join(
 				'step done',
-				value && ('unit' in value ? `${value.text} ${value.unit}` : value.text),
+				value &&
+					('number' in value ? [value.number, value.unit].filter(Boolean).join(' ') : value.text),
 				note
 			);
 		}
@@ -336,6 +339,15 @@ function hours(minutes: number): string {
 	return [whole > 0 && `${whole} h`, (rest > 0 || whole === 0) && `${rest} min`]
 		.filter(Boolean)
 		.join(' ');
+}
+
+/** Who decided on a defect, and on what, as far as the line says. */
+function decidedBy(
+	{ decidedBy: person, basis }: Body<'defect.fixed'> | Body<'defect.decided'>,
+	names: Names
+): string | undefined {
+	const by = [person && names.person(person), basis && BASIS_WORDS[basis]].filter(Boolean);
+	return by.length > 0 ? `by ${by.join(', ')}` : undefined;
 }
 
 function join(...parts: (string | false | undefined)[]): string {

@@ -39,6 +39,14 @@ export const FIX_WORDS: Readonly<Record<Body<'defect.fixed'>['action'], string>>
 	referred: 'referred'
 };
 
+export const BASIS_WORDS: Readonly<Record<NonNullable<Body<'defect.fixed'>['basis']>, string>> = {
+	drawings: 'the drawings',
+	manufacturer: 'the manufacturer',
+	authority: 'the authority',
+	inspector: 'the inspector',
+	own_judgement: 'own judgement'
+};
+
 export const DECISION_WORDS: Readonly<Record<Body<'defect.decided'>['decision'], string>> = {
 	leave: 'leave as is',
 	drive_further: 'drive further',

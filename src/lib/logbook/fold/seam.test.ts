@@ -119,14 +119,12 @@ describe('a hole', () => {
 		expect(summarise(fold())).toMatchObject({ holes: 6, driven: 3 });
 	});
 
-	it('named by itself or by the line that planned it is the same hole', () => {
-		const { scribe, seam, fold } = scene(4);
-		scribe.write(
-			'holes.driven',
-			{ holes: [{ by: seam, from: 1, to: 2 }], method: 'driven' },
-			{ seam }
-		);
-		expect(summarise(fold())).toMatchObject({ holes: 4, driven: 2, outside: 0 });
+	it('of the plan has one name: a line that names it by its seam is refused', () => {
+		const { scribe, seam } = scene(4);
+		const body = { holes: [{ by: seam, from: 1, to: 2 }], method: 'driven' } as const;
+		expect(scribe.read('holes.driven', body as never, { seam })).toMatchObject({
+			code: 'entry.malformed'
+		});
 	});
 
 	it('that no plan knows stays, shown and counted apart', () => {
@@ -316,7 +314,7 @@ describe('a defect', () => {
 				defect: defect.id,
 				holes: [{ from: 2, to: 2 }],
 				action: 'left_as_is',
-				decidedBy: 'the drawings'
+				basis: 'drawings'
 			},
 			{ seam, on: [defect] }
 		);
@@ -531,6 +529,50 @@ describe('the fold', () => {
 			}),
 			{ numRuns: 200 }
 		);
+	});
+
+	it('bears thousands of strikes that lead into a ring, and more holes than a seam can have', () => {
+		const scribe = new Scribe();
+		const seam = scribe.seam(1);
+		const runs = Array.from({ length: 3000 }, () => scribe.drive(seam, 1, 1));
+		for (let i = 0; i < runs.length; i++)
+			scribe.strike(runs[i] as Line, runs[i === runs.length - 1 ? i - 1 : i + 1]);
+		for (let i = 0; i < 8; i++) scribe.write('holes.added', { count: 5000, first: 1 }, { seam });
+		const folded = foldSeam(seam, scribe.lines);
+		expect(folded.holes[0]?.heads).toEqual([runs.at(-2)?.id]);
+		expect(folded.holes).toHaveLength(1);
+	});
+
+	it('settles nothing by a reading that measured nothing, or too coarsely', () => {
+		const { scribe, seam, hole } = scene();
+		const run = scribe.drive(seam, 1, 1);
+		const nm = (value: number) => ({ nm: value, unit: 'mm' }) as const;
+		const limits = {
+			source: 'common practice',
+			widthLeast: nm(4_000_000),
+			widthMost: nm(5_000_000)
+		};
+		const take = (found: object) =>
+			scribe.write(
+				'reading.taken',
+				{ what: { is: 'hole', index: 1 }, found: found as never, limits },
+				{ seam, on: [run] }
+			);
+		take({ by: 'caliper', height: nm(2_000_000) });
+		take({ by: 'photo', width: nm(4_050_000), uncertainty: nm(100_000) });
+		expect(hole(1)).toMatchObject({ good: 0, bad: 0 });
+		take({ by: 'photo', width: nm(4_200_000), uncertainty: nm(100_000) });
+		take({ by: 'caliper', width: nm(3_800_000) });
+		expect(hole(1)).toMatchObject({ good: 1, bad: 1 });
+		expect(
+			scribe.read(
+				'reading.taken',
+				{ what: { is: 'hole', index: 1 }, found: { by: 'caliper' } as never },
+				{ seam }
+			)
+		).toMatchObject({
+			code: 'entry.malformed'
+		});
 	});
 
 	it('costs little for a long seam', () => {

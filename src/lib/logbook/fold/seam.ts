@@ -6,6 +6,7 @@ import { holesOf, type Entry } from '../entry';
 import type { Fault, Holes, HoleRange, Method, SeamOverride, Sheet } from '../kinds';
 import { traits } from '../kinds';
 import { fieldsOf, members, type Field } from './fields';
+import { MOST_HOLES } from '../scalars';
 import { headsOf } from './heads';
 import { inOrder, isKind, type Line } from './line';
 import { strikesOf, type Strikes } from './strikes';
@@ -189,7 +190,7 @@ export function foldSeam(id: string, unordered: readonly Line[]): Seam {
 		});
 	}
 
-	findings.push(...holeFindings(holes, layout));
+	for (const finding of holeFindings(holes, layout)) findings.push(finding);
 	for (const [field, { differs, heads }] of fields)
 		if (differs) findings.push({ is: 'plan_differs', field, lines: heads.map(({ line }) => line) });
 	for (const defect of defects)
@@ -333,6 +334,8 @@ function layOut(
 	for (const line of lines) {
 		if (!isKind(line, 'holes.added') || isStruck(line.id)) continue;
 		const { body } = line.entry;
+		// Beyond what one seam may have they are of no plan; a rivet in one is counted as outside.
+		if (places.length + body.count > MOST_HOLES) continue;
 		const after =
 			body.after && holeKey(body.after.by === id ? undefined : body.after.by, body.after.index);
 		const found = after ? places.findIndex((place) => place.key === after) : -1;
@@ -430,17 +433,25 @@ function isInside({ body: { found, limits } }: Entry<'reading.taken'>): boolean 
 	if (found.by === 'gauge') return found.size === 'inside';
 	if (found.by === 'eye') return found.seated;
 	if (!limits) return undefined;
-	const { width, height } = found;
-	const low = (value?: { nm: number }, least?: { nm: number }) =>
-		!!value && !!least && value.nm < least.nm;
-	const high = (value?: { nm: number }, most?: { nm: number }) =>
-		!!value && !!most && value.nm > most.nm;
-	return !(
-		low(width, limits.widthLeast) ||
-		high(width, limits.widthMost) ||
-		low(height, limits.heightLeast) ||
-		high(height, limits.heightMost)
-	);
+	const margin = found.uncertainty?.nm ?? 0;
+	const verdicts = [
+		within(found.width?.nm, limits.widthLeast?.nm, limits.widthMost?.nm, margin),
+		within(found.height?.nm, limits.heightLeast?.nm, limits.heightMost?.nm, margin)
+	].filter((verdict) => verdict !== 'not judged');
+	if (verdicts.includes('outside')) return false;
+	// Within its uncertainty of a limit a reading settles nothing.
+	return verdicts.length > 0 && !verdicts.includes('open') ? true : undefined;
+}
+
+function within(
+	value: number | undefined,
+	least = -Infinity,
+	most = Infinity,
+	margin: number
+): 'inside' | 'outside' | 'open' | 'not judged' {
+	if (value === undefined || (least === -Infinity && most === Infinity)) return 'not judged';
+	if (value + margin < least || value - margin > most) return 'outside';
+	return value - margin >= least && value + margin <= most ? 'inside' : 'open';
 }
 
 // ---- findings -------------------------------------------------------------------------------------------

@@ -60,28 +60,12 @@ function survivorsOf(
 		if (kept.length < strikes.length) plainly.add(target);
 		if (kept.length) favours.set(target, kept as string[]);
 	}
-	// Whoever favours a line that is not itself in question cannot be in a ring; take those away until none is left.
-	for (let changed = true; changed;) {
-		changed = false;
-		for (const [target, kept] of favours) {
-			if (kept.every((id) => favours.has(id))) continue;
-			favours.delete(target);
-			changed = true;
-		}
-	}
-	const favouredBy = new Map<string, string[]>();
-	for (const [target, kept] of favours)
-		for (const id of kept) favouredBy.set(id, [...(favouredBy.get(id) ?? []), target]);
 	const survivors: string[] = [];
-	const settled = new Set<string>();
-	for (const target of favours.keys()) {
-		if (settled.has(target)) continue;
+	for (const ring of components(favours)) {
 		// A ring is what favours lead to and never out of again; lines that merely lead into one are struck.
-		const ring = reachable(target, favours);
-		const back = reachable(target, favouredBy);
-		if (![...ring].every((id) => back.has(id))) continue;
-		for (const id of ring) settled.add(id);
-		const [earliest] = [...ring]
+		const inside = new Set(ring);
+		if (!ring.every((id) => favours.get(id)?.every((kept) => inside.has(kept)))) continue;
+		const [earliest] = ring
 			.filter((id) => !plainly.has(id))
 			.map((id) => byId.get(id) as Line)
 			.sort((a, b) => byOrder(a.envelope, b.envelope));
@@ -90,9 +74,46 @@ function survivorsOf(
 	return survivors;
 }
 
-/** What can be reached from a line in one step or more. */
-function reachable(from: string, steps: ReadonlyMap<string, readonly string[]>): Set<string> {
-	const reached = new Set(steps.get(from));
-	for (const id of reached) for (const onward of steps.get(id) ?? []) reached.add(onward);
-	return reached;
+/**
+ * The strongly connected components of a graph (Tarjan 1972), among its own nodes. Without recursion: a chain of strikes
+ * may be longer than the stack is deep.
+ */
+function components(graph: ReadonlyMap<string, readonly string[]>): string[][] {
+	const found: string[][] = [];
+	const order = new Map<string, number>();
+	const low = new Map<string, number>();
+	const open: string[] = [];
+	const isOpen = new Set<string>();
+	for (const root of graph.keys()) {
+		if (order.has(root)) continue;
+		const path: { node: string; next: number }[] = [{ node: root, next: 0 }];
+		for (let step = path.at(-1); step; step = path.at(-1)) {
+			const { node } = step;
+			if (step.next === 0) {
+				order.set(node, order.size);
+				low.set(node, order.get(node) as number);
+				open.push(node);
+				isOpen.add(node);
+			}
+			const onward = graph.get(node)?.[step.next++];
+			if (onward !== undefined) {
+				if (!graph.has(onward)) continue;
+				if (!order.has(onward)) path.push({ node: onward, next: 0 });
+				else if (isOpen.has(onward)) lower(low, node, order.get(onward) as number);
+				continue;
+			}
+			path.pop();
+			const above = path.at(-1);
+			if (above) lower(low, above.node, low.get(node) as number);
+			if (low.get(node) !== order.get(node)) continue;
+			const component = open.splice(open.lastIndexOf(node));
+			for (const member of component) isOpen.delete(member);
+			found.push(component);
+		}
+	}
+	return found;
+}
+
+function lower(low: Map<string, number>, node: string, to: number): void {
+	low.set(node, Math.min(low.get(node) as number, to));
 }
