@@ -91,6 +91,7 @@ export async function up(db: Kysely<any>): Promise<void> {
 				primary key (build, name)
 			) strict`.execute(trx);
 
+		// In both of these by id and hash: other bytes under one id take nobody's place.
 		// Acknowledged, on disk, and outside the history until what it refers to has arrived.
 		await sql`
 			create table held (
@@ -102,7 +103,7 @@ export async function up(db: Kysely<any>): Promise<void> {
 				carrier text not null,
 				waits_for text not null,
 				received integer not null,
-				primary key (build, id)
+				primary key (build, id, hash)
 			) strict`.execute(trx);
 		await sql`create index held_waits_for on held (build, waits_for)`.execute(trx);
 
@@ -122,7 +123,7 @@ export async function up(db: Kysely<any>): Promise<void> {
 				decision text check (decision = 'discarded'),
 				decided_by text,
 				decided_at integer,
-				primary key (build, id)
+				primary key (build, id, hash)
 			) strict`.execute(trx);
 		await sql`create index quarantine_stands_on on quarantine (build, stands_on)`.execute(trx);
 		// Counts what one carrier has put there: the limit is per carrier, so that one cannot fill it for all.

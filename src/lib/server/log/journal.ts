@@ -17,16 +17,23 @@ import { N_LEAP } from '$lib/logbook/judge';
 import type { Known, Log } from '$lib/logbook/judge';
 import type { Role } from '$lib/logbook/kinds';
 import type { RefusalCode } from '$lib/logbook/refusals';
-import { sealName } from '$lib/logbook/seal';
+import { sealName, sealStatement } from '$lib/logbook/seal';
 import type { Seal } from '$lib/logbook/seal';
 import type { Trx } from '../db';
+import { Aside } from './aside';
 import { readOffered } from './offered';
 import type { Line } from './offered';
+import { isSignedBy } from './signatures';
 import type { LogTables } from './tables';
 
 export type Member = CrewState;
 interface Device {
 	readonly person: string;
+	readonly key: string;
+}
+/** An enrolment that waits for its author's own session, or was discarded. */
+export interface RefusedDevice {
+	readonly line: string;
 	readonly key: string;
 }
 export interface AcceptedLine extends Known {
@@ -60,8 +67,14 @@ export class Journal implements Log {
 	#crewMoved = false;
 	readonly #devices = new Map<string, Device>();
 	readonly #accepted = new Map<string, AcceptedLine>();
-	readonly #held = new Map<string, HeldLine>();
-	readonly #quarantine = new Map<string, QuarantinedLine>();
+	readonly #held = new Aside<HeldLine>();
+	readonly #quarantine = new Aside<QuarantinedLine>((before, now) =>
+		this.#keepRefusedDevice(before, now)
+	);
+	/** Device → its refused enrolments by id and hash: parsed once, not for each line that asks. */
+	readonly #refusedDevices = new Map<string, Map<string, RefusedDevice>>();
+	/** Seals of lines beside the log, once read. */
+	readonly #keptSeals = new Map<string, Seal | undefined>();
 	/** Withdrawn line → the line that withdrew it. */
 	readonly #withdrawn = new Map<string, string>();
 	readonly #lookedUp = new Set<string>();
@@ -73,8 +86,6 @@ export class Journal implements Log {
 	readonly #changed = {
 		members: new Set<string>(),
 		devices: new Set<string>(),
-		held: new Set<string>(),
-		quarantine: new Set<string>(),
 		/** Lines that were in the log before and lose their body. */
 		bodies: new Set<string>(),
 		withdrawn: new Set<string>()
@@ -183,30 +194,63 @@ export class Journal implements Log {
 			.where('device', 'in', listed(new Set(devices)))
 			.execute();
 		for (const { device, ...row } of rows) this.#devices.set(device, row);
-		const unknown = [...new Set(devices)].some((device) => !this.#devices.has(device));
-		if (unknown && this.#hasAside) await this.lookUp(await this.#refusedEnrolments());
+		const unknown = [...new Set(devices)].filter((device) => !this.#devices.has(device));
+		if (unknown.length > 0 && this.#hasAside) await this.lookUp(await this.#enrolmentsOf(unknown));
 	}
 
-	/** Among what waits for the owner. Asked only when a push brings lines of devices nobody enrolled. */
-	async #refusedEnrolments(): Promise<string[]> {
-		const rows = await this.#trx
-			.selectFrom('quarantine')
-			.select('id')
-			.where('build', '=', this.build)
-			.where('text', 'like', '%"kind":"device.enrolled"%')
-			.execute();
+	/** Ids of the refused enrolments of these devices. Asked only when a push brings lines of devices nobody enrolled. */
+	async #enrolmentsOf(devices: readonly string[]): Promise<string[]> {
+		// Canonical text has its keys side by side; what is no JSON at all cannot be asked for a field.
+		const { rows } = await sql<{ id: string }>`
+			select id from quarantine where build = ${this.build} and text like '%"kind":"device.enrolled"%'
+				and exists (select 1 from json_each(${JSON.stringify(devices)})
+					where instr(text, '"device":"' || value || '"'))
+		`.execute(this.#trx);
 		return rows.map(({ id }) => id);
 	}
 
-	/** A device whose enrolment was refused: it waits for the owner, or was discarded. Its lines share its fate. */
-	refusedDevice(device: string): { readonly line: string; readonly key: string } | undefined {
-		for (const { id, text } of this.#quarantine.values()) {
-			if (text?.includes('"kind":"device.enrolled"') !== true) continue;
-			const { entry } = readOffered(text);
-			if (entry?.kind === 'device.enrolled' && entry.device === device)
-				return { line: id, key: entry.body.key };
+	/** The refused enrolments of a device, each with a key of its own. Its lines share the fate of one of them. */
+	refusedDevices(device: string): RefusedDevice[] {
+		return [...(this.#refusedDevices.get(device)?.values() ?? [])];
+	}
+	refusedDevice(device: string): RefusedDevice | undefined {
+		return this.refusedDevices(device)[0];
+	}
+
+	#keepRefusedDevice(before: QuarantinedLine | undefined, now: QuarantinedLine | undefined): void {
+		const line = now ?? before;
+		// The text of one id and hash never changes, but for coming after all.
+		if (!line || (now && before?.text === now.text)) return;
+		if (line.text?.includes('"kind":"device.enrolled"') !== true) return;
+		const { entry } = readOffered(line.text);
+		if (entry?.kind !== 'device.enrolled') return;
+		const of = this.#refusedDevices.get(entry.device) ?? new Map<string, RefusedDevice>();
+		this.#refusedDevices.set(entry.device, of);
+		if (now) of.set(`${line.id} ${line.hash}`, { line: line.id, key: entry.body.key });
+		else of.delete(`${line.id} ${line.hash}`);
+	}
+
+	/**
+	 * Does the seal kept with a line hold under this key? It was found sound once, but perhaps under the key of an
+	 * enrolment that was refused: a line sealed with a false key must not enter by the enrolment of the true one.
+	 */
+	async isSealedBy(key: string, device: string, hash: string, name: string): Promise<boolean> {
+		let seal = this.#seals.get(name) ?? this.#keptSeals.get(name);
+		if (!seal && !this.#keptSeals.has(name)) {
+			const row = await this.#trx
+				.selectFrom('seal')
+				.select(['device', 'hashes', 'signature'])
+				.where('build', '=', this.build)
+				.where('name', '=', name)
+				.executeTakeFirst();
+			seal = row && { ...row, hashes: JSON.parse(row.hashes) as string[] };
+			this.#keptSeals.set(name, seal);
 		}
-		return undefined;
+		return (
+			seal?.device === device &&
+			seal.hashes.includes(hash) &&
+			isSignedBy(key, sealStatement(this.build, device, seal.hashes), seal.signature)
+		);
 	}
 
 	/** Must come before a crew line is added: the crew is folded from all of them, not from the last. */
@@ -255,7 +299,7 @@ export class Journal implements Log {
 			.where('build', '=', this.build)
 			.where(by === 'id' ? 'id' : 'waits_for', 'in', list)
 			.execute();
-		for (const line of held) if (!this.#changed.held.has(line.id)) this.#held.set(line.id, line);
+		for (const line of held) this.#held.load(line);
 		const quarantined = await this.#trx
 			.selectFrom('quarantine')
 			.select([
@@ -274,25 +318,30 @@ export class Journal implements Log {
 			.where('build', '=', this.build)
 			.where(by === 'id' ? 'id' : 'stands_on', 'in', list)
 			.execute();
-		for (const line of quarantined)
-			if (!this.#changed.quarantine.has(line.id)) this.#quarantine.set(line.id, line);
+		for (const line of quarantined) this.#quarantine.load(line);
 		return [...held, ...quarantined].map((line) => line.id);
 	}
 
 	/**
-	 * The lines that wait for one of `moved`, or followed it into quarantine, in the order in which they may stand on
+	 * The lines that wait for one of `causes`, or followed it into quarantine, in the order in which they may stand on
 	 * each other.
 	 */
-	async dependants(moved: ReadonlySet<string>): Promise<(HeldLine | QuarantinedLine)[]> {
+	async dependants(causes: ReadonlySet<string>): Promise<(HeldLine | QuarantinedLine)[]> {
+		const moved = new Set(causes);
+		// What followed one refused enrolment of a device may have been sealed with the key of another.
+		for (const device of this.#changed.devices)
+			for (const { line } of this.refusedDevices(device)) moved.add(line);
 		await this.lookUp(await this.#loadAside('cause', [...moved]));
-		const held = [...this.#held.values()].filter((line) => moved.has(line.waits_for));
-		const followed = [...this.#quarantine.values()].filter(
-			(line) =>
-				line.stands_on !== null &&
-				moved.has(line.stands_on) &&
-				line.code === 'entry.referent_refused' &&
-				line.decision === null
-		);
+		const held = this.#held.all().filter((line) => moved.has(line.waits_for));
+		const followed = this.#quarantine
+			.all()
+			.filter(
+				(line) =>
+					line.stands_on !== null &&
+					moved.has(line.stands_on) &&
+					line.code === 'entry.referent_refused' &&
+					line.decision === null
+			);
 		return [...held, ...followed];
 	}
 
@@ -353,16 +402,29 @@ export class Journal implements Log {
 		this.#mustBeLookedUp(id);
 		return this.#accepted.get(id);
 	}
-	held(id: string): HeldLine | undefined {
+	held(id: string, hash: string): HeldLine | undefined {
 		this.#mustBeLookedUp(id);
-		return this.#held.get(id);
+		return this.#held.get(id, hash);
 	}
-	quarantined(id: string): QuarantinedLine | undefined {
+	heldUnder(id: string): HeldLine[] {
 		this.#mustBeLookedUp(id);
-		return this.#quarantine.get(id);
+		return this.#held.under(id);
 	}
+	/** Are other bytes held under this id? Whichever is judged acceptable first takes the id. */
+	isHeldOtherwise(id: string, hash: string): boolean {
+		return this.heldUnder(id).some((line) => line.hash !== hash);
+	}
+	quarantined(id: string, hash: string): QuarantinedLine | undefined {
+		this.#mustBeLookedUp(id);
+		return this.#quarantine.get(id, hash);
+	}
+	quarantinedUnder(id: string): QuarantinedLine[] {
+		this.#mustBeLookedUp(id);
+		return this.#quarantine.under(id);
+	}
+	/** Was what stands under this id refused? Not while a line is held under it, whatever else came with the id. */
 	isQuarantined(id: string): boolean {
-		return this.quarantined(id) !== undefined;
+		return this.quarantinedUnder(id).length > 0 && this.heldUnder(id).length === 0;
 	}
 	ownersInCrew(): number {
 		let owners = 0;
@@ -419,18 +481,10 @@ export class Journal implements Log {
 
 	/** A line that entered the log no longer waits. Other bytes under its id never can. */
 	#leaveAside(id: string, hash: string): void {
-		const held = this.#held.get(id);
-		const quarantined = this.#quarantine.get(id);
-		if (held) {
-			this.release(id);
-			if (held.hash !== hash && !quarantined)
-				this.quarantine({ ...held, code: 'entry.id_conflict' });
-		}
-		if (!quarantined) return;
-		if (quarantined.hash === hash) {
-			this.#quarantine.delete(id);
-			this.#changed.quarantine.add(id);
-		} else this.quarantine({ ...quarantined, code: 'entry.id_conflict' });
+		this.#held.delete(id, hash);
+		this.#quarantine.delete(id, hash);
+		for (const other of [...this.#held.under(id), ...this.#quarantine.under(id)])
+			this.quarantine({ ...other, code: 'entry.id_conflict', stands_on: null });
 	}
 
 	/** The tables that repeat what the log says: changed with the line that says it, or not at all. */
@@ -472,17 +526,12 @@ export class Journal implements Log {
 	hold(line: SealedLine, carrier: string, waitsFor: string): void {
 		const { text, hash, seal } = line;
 		const { id } = line.entry;
-		const received = this.#held.get(id)?.received ?? this.received;
-		this.#held.set(id, { id, hash, text, seal, carrier, waits_for: waitsFor, received });
-		this.#changed.held.add(id);
-		if (this.#quarantine.delete(id)) this.#changed.quarantine.add(id);
+		const received = this.#held.get(id, hash)?.received ?? this.received;
+		this.#held.set({ id, hash, text, seal, carrier, waits_for: waitsFor, received });
+		this.#quarantine.delete(id, hash);
 	}
 
-	release(id: string): void {
-		if (this.#held.delete(id)) this.#changed.held.add(id);
-	}
-
-	/** Keeps a refused line for the owner, in the place of what was kept under its id. */
+	/** Keeps a refused line for the owner, beside other bytes under its id. */
 	quarantine(
 		line: Pick<QuarantinedLine, 'id' | 'hash' | 'text' | 'seal' | 'carrier'> & {
 			code: RefusalCode;
@@ -491,10 +540,9 @@ export class Journal implements Log {
 		}
 	): void {
 		const { id, hash, text, seal, carrier, code, stands_on = null } = line;
-		const before = this.#quarantine.get(id);
-		const same = before?.hash === hash ? before : undefined;
+		const same = this.#quarantine.get(id, hash);
 		this.#lookedUp.add(id);
-		this.#quarantine.set(id, {
+		this.#quarantine.set({
 			id,
 			hash,
 			text,
@@ -507,20 +555,18 @@ export class Journal implements Log {
 			decided_by: same?.decided_by ?? null,
 			decided_at: same?.decided_at ?? null
 		});
-		this.#changed.quarantine.add(id);
-		if (this.#held.get(id)?.hash === hash) this.release(id);
+		this.#held.delete(id, hash);
 	}
 
-	discard(id: string, person: string): void {
-		const line = this.#quarantine.get(id);
+	discard(id: string, hash: string, person: string): void {
+		const line = this.#quarantine.get(id, hash);
 		if (!line) return;
-		this.#quarantine.set(id, {
+		this.#quarantine.set({
 			...line,
 			decision: 'discarded',
 			decided_by: person,
 			decided_at: this.received
 		});
-		this.#changed.quarantine.add(id);
 	}
 
 	/** How many lines this carrier has in quarantine, with those of this transaction. */
@@ -589,8 +635,8 @@ export class Journal implements Log {
 				.values({ build, device, ...row })
 				.execute();
 		}
-		await this.#flushAside('held', changed.held, this.#held);
-		await this.#flushAside('quarantine', changed.quarantine, this.#quarantine);
+		await this.#flushAside('held', this.#held);
+		await this.#flushAside('quarantine', this.#quarantine);
 		for (const id of changed.withdrawn)
 			await trx
 				.insertInto('withdrawn')
@@ -601,17 +647,16 @@ export class Journal implements Log {
 
 	async #flushAside(
 		table: 'held' | 'quarantine',
-		changed: ReadonlySet<string>,
-		now: ReadonlyMap<string, HeldLine | QuarantinedLine>
+		aside: Aside<HeldLine> | Aside<QuarantinedLine>
 	): Promise<void> {
-		if (changed.size === 0) return;
+		const { changed } = aside;
+		if (changed.length === 0) return;
 		const { build } = this;
-		await this.#trx
-			.deleteFrom(table)
-			.where('build', '=', build)
-			.where('id', 'in', listed(changed))
-			.execute();
-		const lines = [...changed].flatMap((id) => now.get(id) ?? []);
+		await sql`
+			delete from ${sql.table(table)} where build = ${build}
+				and (id, hash) in (select value ->> 0, value ->> 1 from json_each(${JSON.stringify(changed)}))
+		`.execute(this.#trx);
+		const lines = changed.flatMap(([id, hash]) => aside.get(id, hash) ?? []);
 		if (lines.length === 0) return;
 		const json = JSON.stringify(lines);
 		const common = sql`${build}, value ->> 'id', value ->> 'hash', value ->> 'text', value ->> 'seal',

@@ -179,8 +179,8 @@ function mayBegin(opening: Line, batch: Batch): boolean {
 function settled(journal: Journal, { id, hash }: Offered, outcome: Outcome): Outcome {
 	if (outcome.status !== 'held' || id === null) return outcome;
 	if (journal.find(id)?.hash === hash) return { status: 'accepted' };
-	const refused = journal.quarantined(id);
-	return refused?.hash === hash ? { status: 'refused', code: refused.code } : outcome;
+	const refused = journal.quarantined(id, hash);
+	return refused ? { status: 'refused', code: refused.code } : outcome;
 }
 
 /** One push being taken, line by line. */
@@ -241,11 +241,11 @@ class Taking {
 		if (line.code !== undefined) return this.#refuse(line, line.code);
 
 		const proven = this.#batch.isProven(line);
-		const kept = journal.quarantined(id);
-		if (kept?.hash === hash && kept.decision === 'discarded' && isForOwner(kept.code) && !proven)
+		const kept = journal.quarantined(id, hash);
+		if (kept?.decision === 'discarded' && isForOwner(kept.code) && !proven)
 			return { status: 'discarded' };
 
-		const seal = this.#sealFor(line);
+		const seal = await this.#sealFor(line);
 		if (seal === 'device.unknown') {
 			const judgement = verdict(line.entry, journal);
 			const code = judgement.verdict === 'refuse' && !proven ? judgement.code : seal;
@@ -263,9 +263,8 @@ class Taking {
 				this.#countNumber(line);
 				return { status: 'accepted' };
 			case 'hold': {
-				const held = journal.held(id);
-				// Held under the same id with other bytes: whichever is judged acceptable first takes the id.
-				if (held && held.hash !== hash) return this.#refuse(line, 'entry.id_conflict', seal);
+				const held = journal.held(id, hash);
+				if (journal.isHeldOtherwise(id, hash)) return this.#refuse(line, 'entry.id_conflict', seal);
 				if (!held) this.#countNumber(line);
 				journal.hold({ ...line, seal }, this.#actor, judgement.waitsFor);
 				return { status: 'held' };
@@ -287,19 +286,30 @@ class Taking {
 	}
 
 	/** Name of a sound seal over this line, or why there is none. */
-	#sealFor(line: Line): string {
+	async #sealFor(line: Line): Promise<string> {
 		const { entry, hash } = line;
-		const key =
-			this.#journal.device(entry.device)?.key ??
-			this.#batch.keyOf(entry.device) ??
-			this.#journal.refusedDevice(entry.device)?.key;
-		if (key === undefined) return 'device.unknown';
-		const seal = this.#batch.sealOf(line, key);
-		if (seal) return this.#journal.keepSeal(seal);
-		// One that came with these bytes before, and was found sound.
-		for (const kept of [this.#journal.held(entry.id), this.#journal.quarantined(entry.id)])
-			if (kept?.hash === hash && kept.seal !== null) return kept.seal;
-		return this.#batch.sealRefusal(line, key);
+		const { id, device } = entry;
+		const journal = this.#journal;
+		const enrolled = journal.device(device)?.key;
+		// A false enrolment that came first must not break the seals of the true device.
+		const keys =
+			enrolled === undefined
+				? [
+						...(entry.kind === 'device.enrolled' ? [entry.body.key] : []),
+						this.#batch.keyOf(device) ?? [],
+						...journal.refusedDevices(device).map((refused) => refused.key)
+					].flat()
+				: [enrolled];
+		for (const key of keys) {
+			const seal = this.#batch.sealOf(line, key);
+			if (seal) return journal.keepSeal(seal);
+			// One that came with these bytes before.
+			for (const kept of [journal.held(id, hash), journal.quarantined(id, hash)])
+				if (kept?.seal != null && (await journal.isSealedBy(key, device, hash, kept.seal)))
+					return kept.seal;
+		}
+		const [key] = keys;
+		return key === undefined ? 'device.unknown' : this.#batch.sealRefusal(line, key);
 	}
 
 	/**
@@ -317,11 +327,11 @@ class Taking {
 		const { id, hash, entry } = line;
 		if (id === null || isForLater(code)) return refused;
 		const journal = this.#journal;
-		const kept = journal.quarantined(id);
+		const kept = journal.quarantined(id, hash);
 		const forOwner = isForOwner(code);
 		const standsOn =
 			code === 'entry.referent_refused' && entry ? refusedReferent(entry, journal) : null;
-		if (kept?.hash === hash) {
+		if (kept) {
 			if (kept.decision === 'discarded') return { status: 'discarded' };
 			// Who else brings an enrolment takes nothing back that its author's own session said.
 			if (code === 'device.carried' && kept.carrier === entry?.author) return refused;
@@ -338,9 +348,7 @@ class Taking {
 				});
 			return forOwner ? { status: 'pending', code } : refused;
 		}
-		// Other bytes under the same id: only what the owner may accept displaces what they may not.
-		if (kept && (isForOwner(kept.code) || !forOwner)) return refused;
-		if (!kept && !(await this.#hasRoom(forOwner))) return refused;
+		if (!(await this.#hasRoom(forOwner))) return refused;
 		journal.quarantine({
 			id,
 			hash,

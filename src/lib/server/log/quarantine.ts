@@ -11,6 +11,7 @@ import {
 	enrolmentRefusal,
 	isAcceptable,
 	refusedReferent,
+	sealRefusal,
 	settle,
 	verdictForOwner
 } from './verdict';
@@ -19,7 +20,7 @@ import {
 const MOST_LISTED = 500;
 
 export interface QuarantineList {
-	lines: QuarantinedLine[];
+	lines: (QuarantinedLine & { readonly hash: string })[];
 }
 export interface DecisionResults {
 	/** One for each id asked about, in that order. */
@@ -27,7 +28,7 @@ export interface DecisionResults {
 }
 
 /** A held line mostly finds what it refers to within seconds. Past this, in ms, the owner hears of it. */
-const HELD_PATIENCE = 10 * 60_000;
+export const HELD_PATIENCE = 10 * 60_000;
 
 /**
  * The lines that wait for the owner's decision, oldest first: those refused, and those that have long been held for a
@@ -52,7 +53,7 @@ export async function listQuarantine(
 	if (member.role !== 'owner') return 'build.owner_only';
 	const rows = await db
 		.selectFrom('quarantine')
-		.select(['id', 'code', 'text', 'seal', 'carrier', 'received'])
+		.select(['id', 'hash', 'code', 'text', 'seal', 'carrier', 'received'])
 		.where('build', '=', build)
 		.where('decision', 'is', null)
 		.orderBy('received')
@@ -61,7 +62,7 @@ export async function listQuarantine(
 		.execute();
 	const held = await db
 		.selectFrom('held')
-		.select(['id', 'text', 'carrier', 'received'])
+		.select(['id', 'hash', 'text', 'carrier', 'received'])
 		.where('build', '=', build)
 		.where('received', '<=', now - HELD_PATIENCE)
 		.orderBy('received')
@@ -70,16 +71,18 @@ export async function listQuarantine(
 		.execute();
 	return {
 		lines: [
-			...rows.map(({ id, code, text, seal, carrier, received }) => ({
+			...rows.map(({ id, hash, code, text, seal, carrier, received }) => ({
 				id,
+				hash,
 				code,
 				text,
 				carrier,
 				at: received,
 				acceptable: isAcceptable({ code, text, seal, carrier })
 			})),
-			...held.map(({ id, text, carrier, received }) => ({
+			...held.map(({ id, hash, text, carrier, received }) => ({
 				id,
+				hash,
 				code: 'entry.waits' satisfies RefusalCode,
 				text,
 				carrier,
@@ -98,20 +101,31 @@ function standsAlone(entry: Entry | undefined): boolean {
 	return entry !== undefined && entry.kind !== 'entry.struck' && entry.kind !== 'entry.withdrawn';
 }
 
-/** Takes refused lines into the log, or puts them aside for good. Each is decided by itself. */
+/**
+ * Takes refused lines into the log, or puts them aside for good. Each is decided by itself.
+ *
+ * @param hashes which bytes are meant, where several stand under one id; without it, all of them
+ */
 export async function decideQuarantine(
 	server: LogServer,
 	actor: string,
 	build: string,
-	{ ids, decision }: { ids: readonly string[]; decision: 'accept' | 'discard' }
+	{
+		ids,
+		hashes,
+		decision
+	}: { ids: readonly string[]; hashes?: readonly string[]; decision: 'accept' | 'discard' }
 ): Promise<DecisionResults | RefusalCode> {
+	const isMeant: Meant = ({ hash }) => hashes?.includes(hash) ?? true;
 	const outcome = await write(server.db, async (trx) => {
 		const journal = await Journal.open(trx, build);
 		const refused = ownerRefusal(journal, actor);
 		if (refused !== undefined || journal === undefined) return refused ?? 'build.unknown';
 		await journal.lookUp(ids);
 		const results =
-			decision === 'accept' ? await accept(journal, ids) : discard(journal, ids, actor);
+			decision === 'accept'
+				? await accept(journal, ids, isMeant)
+				: discard(journal, ids, isMeant, actor);
 		await journal.flush();
 		return { results, seq: journal.place.seq };
 	});
@@ -121,37 +135,61 @@ export async function decideQuarantine(
 }
 
 type Outcome = Omit<PushResult, 'id'>;
+/** Is this one of the lines that are decided on? */
+type Meant = (line: { readonly hash: string }) => boolean;
 const UNKNOWN: Outcome = { status: 'refused', code: 'quarantine.not_acceptable' };
 
-function discard(journal: Journal, ids: readonly string[], actor: string): Map<string, Outcome> {
+function discard(
+	journal: Journal,
+	ids: readonly string[],
+	isMeant: Meant,
+	actor: string
+): Map<string, Outcome> {
 	const results = new Map<string, Outcome>();
 	for (const id of ids) {
-		const held = journal.held(id);
-		// Kept like any other the owner decided against, so that its device hears of it.
-		if (held && !journal.isQuarantined(id)) journal.quarantine({ ...held, code: 'entry.waits' });
-		if (!journal.isQuarantined(id)) {
+		// Held lines were not shown if others were. Kept like any other the owner decided against, so that its device
+		// hears of it.
+		if (journal.quarantinedUnder(id).length === 0)
+			for (const held of journal.heldUnder(id))
+				if (isMeant(held)) journal.quarantine({ ...held, code: 'entry.waits' });
+		const lines = journal.quarantinedUnder(id).filter(isMeant);
+		if (lines.length === 0) {
 			if (journal.find(id)) results.set(id, { status: 'duplicate' });
 			continue;
 		}
-		journal.discard(id, actor);
+		for (const { hash } of lines) journal.discard(id, hash, actor);
 		results.set(id, { status: 'discarded' });
 	}
 	return results;
 }
 
-async function accept(journal: Journal, ids: readonly string[]): Promise<Map<string, Outcome>> {
+async function accept(
+	journal: Journal,
+	ids: readonly string[],
+	isMeant: Meant
+): Promise<Map<string, Outcome>> {
 	const results = new Map<string, Outcome>();
 	const lines: (Line & { id: string; seal: string; carrier: string })[] = [];
 	const held = new Set<string>();
 	for (const id of ids) {
 		if (journal.find(id)) results.set(id, { status: 'duplicate' });
-		const waiting = journal.held(id);
-		if (waiting) held.add(id);
-		const kept = waiting ? { ...waiting, code: 'entry.waits' } : journal.quarantined(id);
-		if (!kept || kept.text === null || kept.seal === null || !isAcceptable(kept)) continue;
-		const line = readOffered(kept.text);
-		if (line.entry && line.hash === kept.hash)
-			lines.push({ ...line, seal: kept.seal, carrier: kept.carrier });
+		const refused = journal.quarantinedUnder(id).sort((a, b) => a.received - b.received);
+		const waiting = journal.heldUnder(id).map((line) => ({ ...line, code: 'entry.waits' }));
+		for (const line of waiting) held.add(line.hash);
+		// What was shown comes before what was not: of several under one id the first sound one takes it.
+		for (const kept of [
+			...refused.filter((line) => line.decision === null),
+			...waiting,
+			...refused.filter((line) => line.decision !== null)
+		]) {
+			if (!isMeant(kept) || kept.text === null || kept.seal === null || !isAcceptable(kept))
+				continue;
+			const line = readOffered(kept.text);
+			if (line.entry && line.hash === kept.hash) {
+				lines.push({ ...line, seal: kept.seal, carrier: kept.carrier });
+				break;
+			}
+		}
 	}
 	// A line stands on lower n only, so that those accepted together find each other.
 	lines.sort((a, b) => a.entry.n - b.entry.n);
@@ -161,7 +199,8 @@ async function accept(journal: Journal, ids: readonly string[]): Promise<Map<str
 	for (const { carrier, ...line } of lines) {
 		const { id, entry } = line;
 		if (journal.find(id)) continue;
-		const code = await enrolmentRefusal(entry, carrier, journal);
+		const code =
+			(await sealRefusal(line, journal)) ?? (await enrolmentRefusal(entry, carrier, journal));
 		const judgement = code
 			? ({ verdict: 'refuse', code } as const)
 			: verdictForOwner(entry, journal);
@@ -173,10 +212,14 @@ async function accept(journal: Journal, ids: readonly string[]): Promise<Map<str
 				break;
 			case 'hold':
 				// Held already, and the owner takes it as it is.
-				if (held.has(id) && standsAlone(entry)) {
+				if (held.has(line.hash) && standsAlone(entry)) {
 					journal.append(line);
 					moved.add(id);
 					results.set(id, { status: 'accepted' });
+					break;
+				}
+				if (journal.isHeldOtherwise(id, line.hash)) {
+					results.set(id, { status: 'refused', code: 'entry.id_conflict' });
 					break;
 				}
 				journal.hold(line, carrier, judgement.waitsFor);

@@ -6,7 +6,7 @@ import { mayWrite } from '$lib/logbook/permission';
 import { isRefusalCode, refusal } from '$lib/logbook/refusals';
 import type { RefusalCode } from '$lib/logbook/refusals';
 import { readOffered, referents } from './offered';
-import type { Journal, QuarantinedLine } from './journal';
+import type { Journal, QuarantinedLine, SealedLine } from './journal';
 
 /** Only what people wrote about people or showed of them can be withdrawn; everything else is struck. */
 const WITHDRAWABLE: ReadonlySet<string> = new Set<Kind>([
@@ -15,6 +15,9 @@ const WITHDRAWABLE: ReadonlySet<string> = new Set<Kind>([
 	'voice.recorded',
 	'person.named'
 ]);
+
+/** Beyond this the owner takes nothing in: the form ends at 2^52, and what stands on a line comes above it. */
+const MOST_N = 2 ** 50;
 
 /** A log that also knows enrolments that were refused. */
 type WaitingLog = Log & Pick<Journal, 'refusedDevice'>;
@@ -50,6 +53,8 @@ export function refusedReferent(entry: Entry, log: WaitingLog): string | null {
  * not. A verdict on somebody's work stays an inspector's, whoever accepts it.
  */
 export function verdictForOwner(entry: Entry, journal: Journal): Judgement {
+	// Nothing could be written that stands on it, not even its strike.
+	if (entry.n > MOST_N) return { verdict: 'refuse', code: 'entry.n_too_far' };
 	const inspectorsOnly = !mayWrite('owner', entry.kind, entry.v);
 	const author = journal.member(entry.author);
 	return verdict(entry, {
@@ -82,6 +87,19 @@ export async function enrolmentRefusal(
 	return (await journal.isEnrolledOtherwise(entry.device, device))
 		? 'device.enrolled_before'
 		: undefined;
+}
+
+/** Why the seal kept with a line does not do, now that the key of its device is known. */
+export async function sealRefusal(
+	{ entry, hash, seal }: SealedLine,
+	journal: Journal
+): Promise<RefusalCode | undefined> {
+	const enrolled = journal.device(entry.device)?.key;
+	const key = enrolled ?? (entry.kind === 'device.enrolled' ? entry.body.key : undefined);
+	// Without a key nothing of the device is accepted; then the seal says nothing yet.
+	if (key === undefined || (await journal.isSealedBy(key, entry.device, hash, seal)))
+		return undefined;
+	return 'seal.broken';
 }
 
 /** May the owner take this line into the log, as far as can be said without the log? */
@@ -127,7 +145,9 @@ export async function settle(journal: Journal, moved: Iterable<string>): Promise
 			const { entry, id } = line;
 			// One that was released by another of this round.
 			if (journal.find(id)) continue;
-			const code = await enrolmentRefusal(entry, kept.carrier, journal);
+			const code =
+				(await sealRefusal(line, journal)) ??
+				(await enrolmentRefusal(entry, kept.carrier, journal));
 			const judgement = code ? ({ verdict: 'refuse', code } as const) : verdict(entry, journal);
 			switch (judgement.verdict) {
 				case 'accept':
@@ -135,7 +155,10 @@ export async function settle(journal: Journal, moved: Iterable<string>): Promise
 					causes.add(id);
 					break;
 				case 'hold':
-					journal.hold(line, kept.carrier, judgement.waitsFor);
+					// A held line is acknowledged: other bytes that come to wait as well do not take its place.
+					if (journal.isHeldOtherwise(id, line.hash))
+						journal.quarantine({ ...kept, code: 'entry.id_conflict' satisfies RefusalCode });
+					else journal.hold(line, kept.carrier, judgement.waitsFor);
 					break;
 				case 'refuse': {
 					const { code } = judgement;
