@@ -129,6 +129,8 @@ export type BuildsAnswer = z.output<typeof BuildsAnswer>;
 
 export const QuarantinedLine = z.object({
 	id: z.string(),
+	/** Several lines may wait under one id; this tells them apart. */
+	hash: z.optional(Hash),
 	code: z.string(),
 	/** Null when the line is too broken to be shown. */
 	text: z.nullable(z.string()),
@@ -140,6 +142,8 @@ export type QuarantinedLine = z.output<typeof QuarantinedLine>;
 export const QuarantineAnswer = z.object({ lines: z.array(QuarantinedLine) });
 export const QuarantineDecision = z.object({
 	ids: z.array(Id).check(z.minLength(1), z.maxLength(MOST_PUSHED)),
+	/** Only the lines with these hashes, of those with these ids. */
+	hashes: z.optional(z.array(Hash).check(z.maxLength(MOST_PUSHED))),
 	decision: z.enum(['accept', 'discard'])
 });
 
