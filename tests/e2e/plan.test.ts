@@ -22,6 +22,16 @@ async function register(page: Page, server: TestServer, name: string): Promise<v
 	await expect(page.getByRole('heading', { name: 'My builds' })).toBeVisible();
 }
 
+/** How many lines of their one build the server has. */
+function headOf(page: Page): Promise<number | undefined> {
+	return page.evaluate(async () => {
+		const session = (await (await fetch('/api/session')).json()) as { person: { id: string } };
+		const headers = { 'x-tallybar-person': session.person.id };
+		const answer = await fetch('/api/builds', { headers });
+		return ((await answer.json()) as { builds: { head: number }[] }).builds[0]?.head;
+	});
+}
+
 test('with the server gone a build is opened and planned, and is there after a deep link', async ({
 	page,
 	context,
@@ -39,8 +49,10 @@ test('with the server gone a build is opened and planned, and is there after a d
 	await page.waitForURL('**/plan');
 
 	await page.getByRole('link', { name: 'Add the first assembly' }).click();
+	await expect(page.getByRole('heading', { name: 'New assembly' })).toBeVisible();
 	await page.getByRole('textbox', { name: 'Name' }).fill('Left elevator');
 	await page.getByRole('button', { name: 'Plan this assembly' }).click();
+	await expect(page.getByRole('heading', { name: 'New seam' })).toBeVisible();
 
 	// What is wrong is said at its field, and what was typed stays, also over a reload.
 	await page.getByRole('textbox', { name: 'Name' }).fill('Skin to spar, lower');
@@ -95,7 +107,7 @@ test('with the server gone a build is opened and planned, and is there after a d
 	// The server back, everything goes out.
 	await server.start();
 	await later.reload();
-	await expect(later.getByRole('link', { name: /^Sync: synced/ })).toBeVisible();
+	await expect(later.getByRole('link', { name: /^Sync: synced/ })).toBeVisible({ timeout: 30_000 });
 });
 
 test('two people who changed one field apart see both values, and choosing settles it for both', async ({
@@ -115,12 +127,16 @@ test('two people who changed one field apart see both values, and choosing settl
 	await ana.page.getByRole('textbox', { name: 'Name', exact: true }).fill('Yarrow Two');
 	await ana.page.getByRole('button', { name: 'Open the build' }).click();
 	await ana.page.getByRole('link', { name: 'Add the first assembly' }).click();
+	await expect(ana.page.getByRole('heading', { name: 'New assembly' })).toBeVisible();
 	await ana.page.getByRole('textbox', { name: 'Name' }).fill('Rudder');
 	await ana.page.getByRole('button', { name: 'Plan this assembly' }).click();
+	await expect(ana.page.getByRole('heading', { name: 'New seam' })).toBeVisible();
 	await ana.page.getByRole('textbox', { name: 'Name' }).fill('Skin to ribs');
 	await ana.page.getByRole('textbox', { name: 'How many' }).fill('20');
 	await ana.page.getByRole('button', { name: 'Plan this seam' }).click();
-	await expect(ana.page.getByRole('link', { name: /^Sync: synced/ })).toBeVisible();
+	await expect(ana.page.getByText('Skin to ribs: 20 holes planned')).toBeVisible();
+	// Opened, two devices and the owner noted, the assembly, the seam: all with the server before this page is left.
+	await expect.poll(() => headOf(ana.page), { timeout: 30_000 }).toBe(6);
 
 	// The owner brings Jo in; Jo's phone hears of it by itself.
 	await ana.page.getByRole('link', { name: 'Crew' }).click();
