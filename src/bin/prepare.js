@@ -2,7 +2,7 @@
 import { spawn } from 'node:child_process';
 import { createHash } from 'node:crypto';
 import { existsSync, readdirSync, readFileSync, rmSync, writeFileSync } from 'node:fs';
-import { join } from 'node:path';
+import { dirname, join } from 'node:path';
 import { fileURLToPath } from 'node:url';
 
 /** The repository's folder. */
@@ -115,7 +115,19 @@ function lockedPackages(file) {
 export async function ensureInstalled() {
 	if (isInstalled()) return { code: 0, output: '' };
 	// Also under NODE_ENV=production: the build needs the development packages.
-	return npm(['ci', '--include=dev']);
+	return npm(['ci', '--include=dev'], { env: headersBesideNode() });
+}
+
+/**
+ * better-sqlite3 is compiled where no finished build of it can be had, and for that node-gyp would fetch Node's headers.
+ * Where they lie beside this very Node, they are taken from there: it works without a network, with any home directory.
+ *
+ * @returns {Record<string, string>}
+ */
+function headersBesideNode() {
+	const prefix = dirname(dirname(process.execPath));
+	const there = existsSync(join(prefix, 'include', 'node', 'node_version.h'));
+	return there ? { npm_config_nodedir: prefix } : {};
 }
 
 /** A digest over names and contents of everything the build is made of. */
