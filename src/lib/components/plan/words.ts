@@ -76,6 +76,16 @@ const FIELD_WORDS: Readonly<Record<string, string>> = {
 	note: 'Note'
 };
 
+/** Fields in the order in which the form asks for them; ranges come last. */
+export function inFormOrder<T>(fields: Iterable<readonly [string, T]>): (readonly [string, T])[] {
+	const places = Object.keys(FIELD_WORDS);
+	const place = ([field]: readonly [string, T]) => {
+		const at = places.indexOf(field);
+		return at < 0 ? places.length : at;
+	};
+	return [...fields].sort((a, b) => place(a) - place(b));
+}
+
 /** What a field of a plan is called: `callout`, `overrides.<id>`, `steps.<id>`. */
 export function fieldWords(field: string): string {
 	const [map] = field.split('.');
