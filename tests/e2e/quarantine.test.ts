@@ -39,6 +39,9 @@ test('what a follower drove waits for the owner, who sees it in words and decide
 	await page.getByRole('textbox', { name: 'Password' }).fill(PASSWORD);
 	await page.getByRole('button', { name: 'Sign in' }).click();
 	await page.waitForURL('**/builds');
+	await page.evaluate(async () => {
+		await navigator.serviceWorker.ready;
+	});
 	await page.goto(`${server.url}/builds/${build}/not-accepted`);
 
 	const first = page.getByRole('listitem').filter({ hasText: 'Rear spar: driven 1–5' });

@@ -2,7 +2,8 @@ import { describe as group, expect, it } from 'vitest';
 import { ANA, ASSEMBLY, idOf, JO, Scribe } from '../../../../tests/support/scribe';
 import type { Body, Kind } from '$lib/logbook/kinds';
 import { KINDS } from '$lib/logbook/kinds';
-import { describe, type Names } from './describe';
+import { describe } from './describe';
+import type { Names } from './names';
 
 const SEAM = idOf(0x5ea);
 const HASH = 'A'.repeat(43);

@@ -1,8 +1,9 @@
 /** A line of the log in words. Pure; every kind has a sentence, and a line this app cannot read says so. */
-import { holesOf, type Entry } from '$lib/logbook/entry';
+import type { Entry } from '$lib/logbook/entry';
 import type { Line } from '$lib/logbook/fold/line';
 import type { Body } from '$lib/logbook/kinds';
 import { counted } from '../frame/numbers';
+import { holesText, type Names } from './names';
 import {
 	BASIS_WORDS,
 	DECISION_WORDS,
@@ -10,22 +11,10 @@ import {
 	FIX_WORDS,
 	found,
 	METHOD_WORDS,
-	numbersText,
 	ROLE_WORDS,
 	stamped,
 	STRIKE_WORDS
 } from './words';
-
-/** What ids are called. Each answers with something to read also for an id it does not know. */
-export interface Names {
-	person(id: string): string;
-	seam(id: string): string;
-	assembly(id: string): string;
-	/** What is written on the skin beside a hole, where the plan is known. */
-	holeNumber(seam: string, by: string | undefined, index: number): number | undefined;
-	/** Another line, in a few words. */
-	line(id: string): string;
-}
 
 /** What the line says, without who and when: "driven 27–31". */
 export function describe(line: Line, names: Names): string {
@@ -38,26 +27,6 @@ export function describe(line: Line, names: Names): string {
 		default:
 			return `this line cannot be read (${line.envelope.kind})`;
 	}
-}
-
-/** The numbers of the holes a line names: "27–31", or what can be said without the plan. */
-export function holesText(entry: Entry, names: Names): string {
-	const seam = entry.seam ?? '';
-	const ranges = holesOf(entry);
-	const numbers: number[] = [];
-	let unnumbered = 0;
-	for (const { by, from, to } of ranges)
-		for (let index = from; index <= to; index++) {
-			const number = names.holeNumber(seam, by === seam ? undefined : by, index);
-			if (number === undefined) unnumbered++;
-			else numbers.push(number);
-		}
-	return [
-		numbers.length > 0 && numbersText(numbers),
-		unnumbered > 0 && `${counted(unnumbered, 'hole')} outside the plan`
-	]
-		.filter(Boolean)
-		.join(' and ');
 }
 
 function describeEntry(entry: Entry, names: Names): string {

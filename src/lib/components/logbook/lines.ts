@@ -1,20 +1,17 @@
 /** From lines of the store to what the logbook shows. */
 import type { LoggedLine } from '$lib/device/read';
 import type { Build } from '$lib/logbook/fold/build';
-import { holeKey, type Seam } from '$lib/logbook/fold/seam';
+import type { Seam } from '$lib/logbook/fold/seam';
 import type { Line } from '$lib/logbook/fold/line';
 import { isKind } from '$lib/logbook/fold/line';
 import { sentence } from '$lib/logbook/refusals';
-import { describe, type Names } from './describe';
+import { describe } from './describe';
+import { placeNames, type Names } from './names';
 import { STRIKE_WORDS } from './words';
 
 /** The names of a page of lines: from the folds of the seams they are about. */
 export function namesFrom(
-	{
-		seams,
-		build,
-		person
-	}: {
+	from: {
 		readonly seams: ReadonlyMap<string, Seam>;
 		readonly build: Pick<Build, 'assemblies' | 'lines'>;
 		readonly person: (id: string) => string;
@@ -22,29 +19,15 @@ export function namesFrom(
 	/** Names of seams that are not folded here. */
 	seamName: (id: string) => string | undefined = () => undefined
 ): Names {
-	const assemblies = new Map(build.assemblies.map(({ id, name }) => [id, name]));
-	const numbers = new Map<string, ReadonlyMap<string, number>>();
-	const numbersOf = (seam: string) => {
-		const known = numbers.get(seam);
-		if (known) return known;
-		const made = new Map<string, number>();
-		for (const { key, number } of seams.get(seam)?.holes ?? [])
-			if (number !== undefined) made.set(key, number);
-		numbers.set(seam, made);
-		return made;
-	};
 	const lineAt = (id: string): Line | undefined => {
-		for (const { lines } of seams.values()) {
+		for (const { lines } of from.seams.values()) {
 			const line = lines.find((found) => found.id === id);
 			if (line) return line;
 		}
-		return build.lines.find((found) => found.id === id);
+		return from.build.lines.find((found) => found.id === id);
 	};
 	const names: Names = {
-		person,
-		seam: (id) => seams.get(id)?.plan.name || seamName(id) || 'a seam not known here',
-		assembly: (id) => assemblies.get(id) ?? 'an assembly not known here',
-		holeNumber: (seam, by, index) => numbersOf(seam).get(holeKey(by, index)),
+		...placeNames(from, seamName),
 		line: (id) => {
 			const line = lineAt(id);
 			// A strike of a strike would go on for ever; one step says enough.

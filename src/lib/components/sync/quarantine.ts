@@ -3,7 +3,8 @@ import { readEntry } from '$lib/logbook/entry';
 import { lineOf } from '$lib/logbook/fold/line';
 import { sentence } from '$lib/logbook/refusals';
 import type { PushResult, QuarantinedLine } from '$lib/logbook/wire';
-import { describe, type Names } from '../logbook/describe';
+import { describe } from '../logbook/describe';
+import type { Names } from '../logbook/names';
 
 export interface Waiting {
 	readonly id: string;

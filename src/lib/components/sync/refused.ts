@@ -3,7 +3,8 @@ import { foldedSeam, oneLine } from '$lib/device/read';
 import type { OutboxRow } from '$lib/device/schema';
 import type { DeviceStore } from '$lib/device/store';
 import { holeKey } from '$lib/logbook/fold/seam';
-import { describe, type Names } from '../logbook/describe';
+import { describe } from '../logbook/describe';
+import type { Names } from '../logbook/names';
 
 export interface NotAcceptedLine {
 	readonly id: string;

@@ -79,7 +79,7 @@ export function waitsFor(build: BuildStatus): string[] {
 	].filter((text) => text !== false);
 }
 
-export function hour(ms: number): string {
+function hour(ms: number): string {
 	const date = new Date(ms);
 	return `${String(date.getHours()).padStart(2, '0')}:${String(date.getMinutes()).padStart(2, '0')}`;
 }
