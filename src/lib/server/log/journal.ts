@@ -68,9 +68,9 @@ export class Journal implements Log {
 	readonly #devices = new Map<string, Device>();
 	readonly #accepted = new Map<string, AcceptedLine>();
 	readonly #held = new Aside<HeldLine>();
-	readonly #quarantine = new Aside<QuarantinedLine>((before, now) =>
-		this.#keepRefusedDevice(before, now)
-	);
+	readonly #quarantine = new Aside<QuarantinedLine>((before, now) => {
+		this.#keepRefusedDevice(before, now);
+	});
 	/** Device → its refused enrolments by id and hash: parsed once, not for each line that asks. */
 	readonly #refusedDevices = new Map<string, Map<string, RefusedDevice>>();
 	/** Seals of lines beside the log, once read. */

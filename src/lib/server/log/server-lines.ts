@@ -41,7 +41,7 @@ export function writeServerLines(
 			body: line.body
 		} as Entry;
 		const before = written.map((other) => other.entry);
-		written.push(write({ ...entry, on: journal.crewHeads(entry, before) } as Entry));
+		written.push(write({ ...entry, on: journal.crewHeads(entry, before) }));
 	}
 	const seal = journal.keepSeal(
 		key.makeSeal(
