@@ -8,7 +8,7 @@ import type { Role } from '../kinds';
 import { headsOf } from './heads';
 import type { Line } from './line';
 
-export const CREW_KINDS = ['crew.joined', 'crew.role', 'crew.left', 'owner.changed'] as const;
+const CREW_KINDS = ['crew.joined', 'crew.role', 'crew.left', 'owner.changed'] as const;
 type CrewEntry = Extract<Entry, { kind: (typeof CREW_KINDS)[number] }>;
 
 export interface CrewState {
