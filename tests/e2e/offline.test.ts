@@ -13,7 +13,7 @@ test('with the server gone, a page never visited opens by its address', async ({
 
 	const later = await context.newPage();
 	await later.goto(`${server.url}/builds`);
-	await expect(later.getByRole('heading', { name: 'My builds' })).toBeVisible();
+	await expect(later.getByRole('heading', { name: 'Nobody is signed in here' })).toBeVisible();
 
 	// One that only the server can draw says so instead of staying blank.
 	await later.goto(`${server.url}/sign-in`);
