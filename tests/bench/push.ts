@@ -41,7 +41,7 @@ const MOST_CLIENTS = 8;
 const FILL_BATCH = 200;
 /** Lines that warm a server up. */
 const WARM = 4000;
-const SEAM = 20_000;
+const SEAM = 5000;
 const CALLOUT = 'MS20470AD4-4';
 
 interface Client {
