@@ -4,6 +4,7 @@ import type { Role } from '../kinds';
 import type { Entry } from '../entry';
 import { crewOf } from './crew';
 import { fieldsOf, members, type Field } from './fields';
+import { gather } from './gather';
 import { headsOf } from './heads';
 import { strikesOf, type Strikes } from './strikes';
 
@@ -128,9 +129,7 @@ function assembliesOf(lines: readonly Line[], isStruck: (id: string) => boolean)
 	for (const line of lines) {
 		const { assembly } = line.envelope;
 		if (assembly === undefined) continue;
-		const list = byAssembly.get(assembly);
-		if (list) list.push(line);
-		else byAssembly.set(assembly, [line]);
+		gather(byAssembly, assembly, line);
 	}
 	return [...byAssembly]
 		.filter(([id, own]) => own.some((line) => line.id === id))

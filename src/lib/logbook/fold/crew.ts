@@ -5,6 +5,7 @@
  */
 import type { Entry } from '../entry';
 import type { Role } from '../kinds';
+import { gather } from './gather';
 import { headsOf } from './heads';
 import type { Line } from './line';
 
@@ -84,9 +85,7 @@ function claims(lines: readonly Line[]): Map<string, Line[]> {
 	for (const line of lines) {
 		if (!isCrewEntry(line.entry)) continue;
 		for (const person of new Set(spokenOf(line.entry))) {
-			const list = about.get(person);
-			if (list) list.push(line);
-			else about.set(person, [line]);
+			gather(about, person, line);
 		}
 	}
 	return about;

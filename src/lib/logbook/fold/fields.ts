@@ -1,4 +1,5 @@
 /** Fields of a plan: each key of a body, and each member of `overrides`, `steps` and `rules`, is one. */
+import { gather } from './gather';
 import { headsOf } from './heads';
 import type { Line } from './line';
 
@@ -32,11 +33,8 @@ export function fieldsOf(
 ): ReadonlyMap<string, Field> {
 	const claims = new Map<string, { line: Line; value: unknown }[]>();
 	for (const line of lines)
-		for (const [field, value] of stated(line.entry?.body ?? {}, skip)) {
-			const list = claims.get(field);
-			if (list) list.push({ line, value });
-			else claims.set(field, [{ line, value }]);
-		}
+		for (const [field, value] of stated(line.entry?.body ?? {}, skip))
+			gather(claims, field, { line, value });
 	const fields = new Map<string, Field>();
 	for (const [name, list] of claims) {
 		const values = new Map(list.map(({ line, value }) => [line.id, value ?? undefined]));

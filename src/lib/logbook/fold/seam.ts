@@ -7,6 +7,7 @@ import type { Fault, Holes, HoleRange, Method, SeamOverride, Sheet } from '../ki
 import { traits } from '../kinds';
 import { fieldsOf, members, type Field } from './fields';
 import { MOST_HOLES } from '../scalars';
+import { gather } from './gather';
 import { headsOf } from './heads';
 import { inOrder, isKind, type Line } from './line';
 import { strikesOf, type Strikes } from './strikes';
@@ -145,13 +146,13 @@ export function foldSeam(id: string, unordered: readonly Line[]): Seam {
 			: isKind(line, 'holes.looked_at', 'reading.taken') && !isStruck(line.id)
 				? remarks
 				: undefined;
-		if (into) for (const key of keysOf(id, holesOf(line.entry))) push(into, key, line);
+		if (into) for (const key of keysOf(id, holesOf(line.entry))) gather(into, key, line);
 	}
 	const defects = defectsOf(id, lines, isStruck);
 	const defectsAt = new Map<HoleKey, string[]>();
 	for (const defect of defects)
 		for (const { key, state } of defect.holes)
-			if (state !== 'settled') push(defectsAt, key, defect.id);
+			if (state !== 'settled') gather(defectsAt, key, defect.id);
 
 	const overrideAt = new Map<HoleKey, SeamOverride>();
 	for (const [, override] of overrides)
@@ -390,7 +391,8 @@ function defectsOf(
 ): Defect[] {
 	const answers = new Map<string, Line[]>();
 	for (const line of lines)
-		if (isKind(line, 'defect.decided', 'defect.fixed')) push(answers, line.entry.body.defect, line);
+		if (isKind(line, 'defect.decided', 'defect.fixed'))
+			gather(answers, line.entry.body.defect, line);
 	return lines.flatMap((line): Defect[] => {
 		if (!isKind(line, 'defect.noted') || isStruck(line.id)) return [];
 		const { fault, note, holes } = line.entry.body;
@@ -491,10 +493,4 @@ function groupBy<T>(items: readonly T[], name: (item: T) => string): [T, ...T[]]
 		else groups.set(name(item), [item]);
 	}
 	return [...groups.values()];
-}
-
-function push<K, V>(map: Map<K, V[]>, key: K, value: V): void {
-	const list = map.get(key);
-	if (list) list.push(value);
-	else map.set(key, [value]);
 }

@@ -5,6 +5,7 @@
  */
 import { byOrder } from '../entry';
 import { traits } from '../kinds';
+import { gather } from './gather';
 import { isKind, type Line } from './line';
 
 export interface Strikes {
@@ -29,9 +30,7 @@ export function strikesOf(lines: readonly Line[]): Strikes {
 			idle.push(line);
 			continue;
 		}
-		const list = against.get(target.id);
-		if (list) list.push(line);
-		else against.set(target.id, [line]);
+		gather(against, target.id, line);
 	}
 	for (const survivor of survivorsOf(against, byId)) against.delete(survivor);
 	const hollow = [...against.values()].flat().filter((strike) => {
