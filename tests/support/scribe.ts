@@ -30,6 +30,8 @@ export class Scribe {
 	#n = 1;
 	/** Everything written, in the order of writing. */
 	readonly lines: Line[] = [];
+	/** The wall time of what is written next. */
+	now = '2026-03-14T20:15:00.000+01:00';
 
 	write<K extends Kind>(kind: K, body: Body<K>, options: Options = {}): Line {
 		const line = lineOf(this.read(kind, body, options)) as Line;
@@ -54,7 +56,7 @@ export class Scribe {
 			n,
 			device: rest.device ?? idOf(author === ANA ? 0xd0 : 0xd1),
 			author,
-			at: rest.at ?? '2026-03-14T20:15:00.000+01:00',
+			at: rest.at ?? this.now,
 			...(rest.seam !== undefined && { seam: rest.seam }),
 			...(rest.assembly !== undefined && { assembly: rest.assembly }),
 			...(rest.when !== undefined && { when: rest.when }),

@@ -1,4 +1,7 @@
-/** What the sheets of the bench write: pure, from the fold and what was chosen. */
+/**
+ * What the sheets of the bench write: pure, from the fold and what was chosen. One line each, or as many as so many holes
+ * take: they are written in one act, and undone in one.
+ */
 import type { Draft } from '$lib/device/append';
 import { holesOf } from '$lib/logbook/entry';
 import {
@@ -13,6 +16,7 @@ import {
 } from '$lib/logbook/fold/seam';
 import { isKind, type Line } from '$lib/logbook/fold/line';
 import type { Body, Fault } from '$lib/logbook/kinds';
+import { fitting } from '../logbook/fitting';
 import { drivenDrafts, type HowDriven } from './run';
 
 /** Text as a line takes it, or undefined when nothing was typed. */
@@ -21,46 +25,48 @@ export function typed(text: string): string | undefined {
 	return trimmed === '' ? undefined : trimmed;
 }
 
-export function defectDraft(
+export function defectDrafts(
 	seam: Seam,
 	holes: readonly Hole[],
 	fault: Fault,
 	note?: string
-): Draft<'defect.noted'> {
-	return {
+): Draft<'defect.noted'>[] {
+	return fitting(holes, headsOf).map((some) => ({
 		kind: 'defect.noted',
 		seam: seam.id,
-		on: headsAt(holes),
-		body: { holes: rangesOf(holes), fault, ...(note !== undefined && { note }) }
-	};
+		on: headsAt(some),
+		body: { holes: rangesOf(some), fault, ...(note !== undefined && { note }) }
+	}));
 }
 
-export function leftOpenDraft(
+export function leftOpenDrafts(
 	seam: Seam,
 	holes: readonly Hole[],
 	reason: string,
 	closedBy?: string
-): Draft<'holes.left_open'> {
-	return {
+): Draft<'holes.left_open'>[] {
+	return fitting(holes, headsOf).map((some) => ({
 		kind: 'holes.left_open',
 		seam: seam.id,
-		on: headsAt(holes),
-		body: { holes: rangesOf(holes), reason, ...(closedBy !== undefined && { closedBy }) }
-	};
+		on: headsAt(some),
+		body: { holes: rangesOf(some), reason, ...(closedBy !== undefined && { closedBy }) }
+	}));
 }
 
-export function drilledOutDraft(
+export function drilledOutDrafts(
 	seam: Seam,
 	holes: readonly Hole[],
 	reason?: string
-): Draft<'holes.drilled_out'> {
-	return {
+): Draft<'holes.drilled_out'>[] {
+	return fitting(holes, headsOf).map((some) => ({
 		kind: 'holes.drilled_out',
 		seam: seam.id,
-		on: headsAt(holes),
-		body: { holes: rangesOf(holes), ...(reason !== undefined && { reason }) }
-	};
+		on: headsAt(some),
+		body: { holes: rangesOf(some), ...(reason !== undefined && { reason }) }
+	}));
 }
+
+const headsOf = ({ heads }: Hole) => heads;
 
 type Action = Body<'defect.fixed'>['action'];
 
@@ -78,6 +84,21 @@ export interface Fix {
  * that names the new rivet; their ids are made up front because each stands on the one before.
  */
 export function fixDrafts(
+	seam: Seam,
+	defect: Defect,
+	holes: readonly Hole[],
+	fix: Fix,
+	how: HowDriven,
+	newId: () => string
+): Draft[] {
+	const answers = new Map(defect.holes.map(({ key, heads }) => [key, heads]));
+	// Besides what the holes stand on: the defect, the drilling out and the new rivet.
+	return fitting(holes, ({ key, heads }) => [...heads, ...(answers.get(key) ?? [])], 3).flatMap(
+		(some) => fixInOneLine(seam, defect, some, fix, how, newId)
+	);
+}
+
+function fixInOneLine(
 	seam: Seam,
 	defect: Defect,
 	holes: readonly Hole[],
@@ -110,7 +131,9 @@ export function fixDrafts(
 			? [
 					{
 						id: out,
-						...drilledOutDraft(seam, filled),
+						kind: 'holes.drilled_out' as const,
+						seam: seam.id,
+						on: headsAt(filled),
 						body: { holes: rangesOf(filled), defect: defect.id }
 					}
 				]
@@ -188,17 +211,18 @@ export function settleDrafts(
 	)
 		return [];
 	const { kind, body, author } = keep.entry;
-	return [
-		{
-			kind,
-			seam: seam.id,
-			on: finding.lines,
-			body: {
-				...body,
-				holes: rangesOf(holes),
-				// Credit stays with who drove it, not with who settled it.
-				...(kind === 'holes.driven' && { shooter: keep.entry.body.shooter ?? author })
-			}
-		} as Draft
-	];
+	return fitting(holes, () => finding.lines).map(
+		(some) =>
+			({
+				kind,
+				seam: seam.id,
+				on: finding.lines,
+				body: {
+					...body,
+					holes: rangesOf(some),
+					// Credit stays with who drove it, not with who settled it.
+					...(kind === 'holes.driven' && { shooter: keep.entry.body.shooter ?? author })
+				}
+			}) as Draft
+	);
 }

@@ -3,6 +3,7 @@ import { headsAt, rangesOf, type Hole, type HoleKey, type Seam } from '$lib/logb
 import { isKind, type Line } from '$lib/logbook/fold/line';
 import type { Method } from '$lib/logbook/kinds';
 import type { Draft } from '$lib/device/append';
+import { fitting } from '../logbook/fitting';
 
 export type RunLength = 1 | 2 | 5 | 10 | 'row';
 export const RUN_LENGTHS: readonly RunLength[] = [1, 2, 5, 10, 'row'];
@@ -127,8 +128,8 @@ export function calloutOf(seam: Seam, hole: Hole | undefined): string | undefine
 }
 
 /**
- * The lines that log these holes as driven: one, or one for each callout and method among them. They stand on what was
- * known of the holes.
+ * The lines that log these holes as driven: one, or one for each callout and method among them, and more where so many
+ * holes do not fit into one. They stand on what was known of the holes.
  */
 export function drivenDrafts(
 	seam: Seam,
@@ -140,7 +141,8 @@ export function drivenDrafts(
 		const name = `${calloutOf(seam, hole) ?? ''} ${methodOf(seam, hole, method)}`;
 		groups.set(name, [...(groups.get(name) ?? []), hole]);
 	}
-	return [...groups.values()].map((group) => {
+	const fit = [...groups.values()].flatMap((group) => fitting(group, ({ heads }) => heads));
+	return fit.map((group) => {
 		const callout = calloutOf(seam, group[0]);
 		return {
 			kind: 'holes.driven',

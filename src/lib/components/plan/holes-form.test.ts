@@ -14,7 +14,7 @@ describe('adding holes', () => {
 		const typed = emptyAddition(setUp().fold());
 		expect(typed.first).toBe('11');
 		const read = readAddition({ ...typed, count: '3' }, setUp().fold());
-		expect(read).toEqual({ ok: true, body: { count: 3, first: 11 }, on: [] });
+		expect(read).toEqual({ ok: true, body: { count: 3, first: 11 } });
 	});
 
 	it('puts them after a hole, by its identity', () => {
@@ -37,8 +37,7 @@ describe('retiring holes', () => {
 		const read = readRetirement({ holes: '5-6', reason: ' doubler moved ' }, fold());
 		expect(read).toEqual({
 			ok: true,
-			body: { holes: [{ from: 5, to: 6 }], reason: 'doubler moved' },
-			on: [driven.id]
+			lines: [{ body: { holes: [{ from: 5, to: 6 }], reason: 'doubler moved' }, on: [driven.id] }]
 		});
 	});
 
@@ -47,5 +46,18 @@ describe('retiring holes', () => {
 		scribe.write('holes.retired', { holes: [{ from: 6, to: 6 }] }, { seam });
 		const read = readRetirement({ holes: '6', reason: '' }, fold());
 		expect(!read.ok && read.errors.holes).toBe('There is no hole 6 on this seam.');
+	});
+
+	it('takes several lines where one cannot stand on all that holds them', () => {
+		const scribe = new Scribe();
+		const seam = scribe.seam(1200);
+		for (let hole = 1; hole <= 1200; hole++) scribe.drive(seam, hole, hole);
+		const read = readRetirement({ holes: '1-1200', reason: '' }, foldSeam(seam, scribe.lines));
+		const lines = read.ok ? read.lines : [];
+		expect(lines.length).toBeGreaterThan(1);
+		expect(lines.every(({ on }) => on.length <= 800)).toBe(true);
+		expect(lines.flatMap(({ on }) => on)).toHaveLength(1200);
+		expect(lines[0]?.body.holes[0]?.from).toBe(1);
+		expect(lines.at(-1)?.body.holes[0]?.to).toBe(1200);
 	});
 });

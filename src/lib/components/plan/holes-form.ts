@@ -3,6 +3,7 @@ import { headsAt, rangesOf, type Hole, type Seam } from '$lib/logbook/fold/seam'
 import type { Body } from '$lib/logbook/kinds';
 import { MOST_HOLES } from '$lib/logbook/scalars';
 import { FormReader, type Errors } from '../frame/form-reader';
+import { fitting } from '../logbook/fitting';
 import { holesNumbered } from './hole-numbers';
 
 export interface AddTyped {
@@ -18,9 +19,8 @@ export interface RetireTyped {
 	reason: string;
 }
 
-type Read<Body> =
-	| { readonly ok: true; readonly body: Body; readonly on: readonly string[] }
-	| { readonly ok: false; readonly errors: Errors };
+type Read<Value> =
+	({ readonly ok: true } & Value) | { readonly ok: false; readonly errors: Errors };
 
 /** The next free number: numbers are never used again, not even those of retired holes. */
 export function nextNumber(holes: readonly Pick<Hole, 'number'>[]): number {
@@ -34,7 +34,7 @@ export function emptyAddition(seam: Pick<Seam, 'holes'>): AddTyped {
 export function readAddition(
 	typed: AddTyped,
 	{ holes }: Pick<Seam, 'holes'>
-): Read<Body<'holes.added'>> {
+): Read<{ readonly body: Body<'holes.added'> }> {
 	const read = new FormReader();
 	const count = read.whole('count', typed.count, 1, MOST_HOLES, 'How many holes are added?');
 	const first = read.whole(
@@ -72,15 +72,21 @@ export function readAddition(
 				after: { ...(before.by !== undefined && { by: before.by }), index: before.index }
 			}),
 			...(reason !== undefined && { reason })
-		},
-		on: []
+		}
 	};
 }
 
+/** A line that retires holes, and what it stands on. */
+export interface Retirement {
+	readonly body: Body<'holes.retired'>;
+	readonly on: readonly string[];
+}
+
+/** One line, or as many as so many holes take: for one act. */
 export function readRetirement(
 	typed: RetireTyped,
 	{ holes }: Pick<Seam, 'holes'>
-): Read<Body<'holes.retired'>> {
+): Read<{ readonly lines: readonly Retirement[] }> {
 	const read = new FormReader();
 	const reason = read.text('reason', typed.reason, 200);
 	const found = holesNumbered(
@@ -91,7 +97,9 @@ export function readRetirement(
 	if (!found.ok || Object.keys(read.errors).length > 0) return { ok: false, errors: read.errors };
 	return {
 		ok: true,
-		body: { holes: rangesOf(found.holes), ...(reason !== undefined && { reason }) },
-		on: headsAt(found.holes)
+		lines: fitting(found.holes, ({ heads }) => heads).map((some) => ({
+			body: { holes: rangesOf(some), ...(reason !== undefined && { reason }) },
+			on: headsAt(some)
+		}))
 	};
 }
