@@ -2,7 +2,7 @@ import { mkdirSync } from 'node:fs';
 import { join } from 'node:path';
 import Sqlite from 'better-sqlite3';
 import { CompiledQuery, Kysely, SqliteDialect, SqliteDriver } from 'kysely';
-import type { DatabaseConnection, Driver, Transaction } from 'kysely';
+import type { DatabaseConnection, Driver, SqliteDatabase, Transaction } from 'kysely';
 import { config } from './config';
 import type { Database } from './schema';
 
@@ -23,7 +23,7 @@ class ImmediateDriver extends SqliteDriver {
 	#begun = false;
 
 	constructor(sqlite: Sqlite.Database) {
-		super({ database: sqlite });
+		super({ database: preparing(sqlite) });
 		this.#sqlite = sqlite;
 	}
 
@@ -55,6 +55,30 @@ class ImmediateDriver extends SqliteDriver {
 		if (this.#sqlite.inTransaction) await super.rollbackTransaction(connection);
 		this.#begun = false;
 	}
+}
+
+/** Different statements in use; the product has fewer than a hundred. */
+const MOST_STATEMENTS = 500;
+
+/**
+ * The same SQL is compiled once. What must hold: Kysely runs a statement to its end before it asks for the next, so
+ * that one is never in use twice; a list that grew without bound would mean SQL with values written into it.
+ */
+function preparing(sqlite: Sqlite.Database): SqliteDatabase {
+	const prepared = new Map<string, Sqlite.Statement>();
+	return {
+		prepare(sql) {
+			let statement = prepared.get(sql);
+			if (!statement) {
+				if (prepared.size >= MOST_STATEMENTS) prepared.clear();
+				prepared.set(sql, (statement = sqlite.prepare(sql)));
+			}
+			return statement;
+		},
+		close() {
+			sqlite.close();
+		}
+	};
 }
 
 class ImmediateDialect extends SqliteDialect {

@@ -592,7 +592,7 @@ export class Journal implements Log {
 				insert into entry (build, received, seq, id, hash, n, device, author, kind, v, seam, assembly, text, link, seal)
 				select ${build}, ${this.received}, value ->> 0, value ->> 1, value ->> 2, value ->> 3, value ->> 4,
 					value ->> 5, value ->> 6, value ->> 7, value ->> 8, value ->> 9, value ->> 10, value ->> 11, value ->> 12
-				from json_each(${JSON.stringify(this.#appended)})
+				from jsonb_each(${JSON.stringify(this.#appended)})
 			`.execute(trx);
 			await trx
 				.updateTable('build')
@@ -615,7 +615,7 @@ export class Journal implements Log {
 			await sql`
 				insert or ignore into seal (build, name, device, hashes, signature)
 				select ${build}, value ->> 0, value ->> 1, value ->> 2, value ->> 3
-				from json_each(${JSON.stringify(rows)})
+				from jsonb_each(${JSON.stringify(rows)})
 			`.execute(trx);
 		}
 		const members = this.#membersNow();
@@ -654,7 +654,7 @@ export class Journal implements Log {
 		const { build } = this;
 		await sql`
 			delete from ${sql.table(table)} where build = ${build}
-				and (id, hash) in (select value ->> 0, value ->> 1 from json_each(${JSON.stringify(changed)}))
+				and (id, hash) in (select value ->> 0, value ->> 1 from jsonb_each(${JSON.stringify(changed)}))
 		`.execute(this.#trx);
 		const lines = changed.flatMap(([id, hash]) => aside.get(id, hash) ?? []);
 		if (lines.length === 0) return;
@@ -665,12 +665,12 @@ export class Journal implements Log {
 			table === 'held'
 				? sql`
 					insert into held (build, id, hash, text, seal, carrier, received, waits_for)
-					select ${common}, value ->> 'waits_for' from json_each(${json})`
+					select ${common}, value ->> 'waits_for' from jsonb_each(${json})`
 				: sql`
 					insert into quarantine (build, id, hash, text, seal, carrier, received, code, stands_on, decision,
 						decided_by, decided_at)
 					select ${common}, value ->> 'code', value ->> 'stands_on', value ->> 'decision',
-						value ->> 'decided_by', value ->> 'decided_at' from json_each(${json})`
+						value ->> 'decided_by', value ->> 'decided_at' from jsonb_each(${json})`
 		).execute(this.#trx);
 	}
 

@@ -245,7 +245,7 @@ class Taking {
 		if (kept?.decision === 'discarded' && isForOwner(kept.code) && !proven)
 			return { status: 'discarded' };
 
-		const seal = await this.#sealFor(line);
+		const seal = this.#sealBrought(line) ?? (await this.#sealFor(line));
 		if (seal === 'device.unknown') {
 			const judgement = verdict(line.entry, journal);
 			const code = judgement.verdict === 'refuse' && !proven ? judgement.code : seal;
@@ -253,7 +253,10 @@ class Taking {
 		}
 		if (seal === 'seal.broken' || seal === 'seal.missing') return this.#refuse(line, seal);
 
-		const code = proven ? undefined : await enrolmentRefusal(line.entry, this.#actor, journal);
+		const code =
+			proven || line.entry.kind !== 'device.enrolled'
+				? undefined
+				: await enrolmentRefusal(line.entry, this.#actor, journal);
 		if (code) return this.#refuse(line, this.#unlessCarriedHome(code), seal);
 		const judgement = proven ? ({ verdict: 'accept' } as const) : verdict(line.entry, journal);
 		switch (judgement.verdict) {
@@ -283,6 +286,13 @@ class Taking {
 
 	#countNumber({ entry }: Line): void {
 		if (entry.device === this.#device) this.#numbers.push(entry.n);
+	}
+
+	/** Name of the seal that came with this line, where its device is known: nearly always, and nothing is waited for. */
+	#sealBrought(line: Line): string | undefined {
+		const key = this.#journal.device(line.entry.device)?.key;
+		const seal = key === undefined ? undefined : this.#batch.sealOf(line, key);
+		return seal && this.#journal.keepSeal(seal);
 	}
 
 	/** Name of a sound seal over this line, or why there is none. */
