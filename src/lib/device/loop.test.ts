@@ -41,14 +41,21 @@ function loopOf(
 
 describe('the loop', () => {
 	test('sends what is written without being asked, and says synced only when it came back', async () => {
-		const ada = await device();
+		let sendable = Promise.resolve();
+		const ada = await device((real) => ({
+			push: (...call) => sendable.then(() => real.push(...call))
+		}));
 		const { build, seam } = await openBuild(ada.store);
 		const loop = loopOf(ada);
 		expect(loop.status.synced).toBe(false);
 		loop.start();
 		await expect.poll(() => loop.status.synced, { timeout: 5000 }).toBe(true);
+		let send: () => void = () => undefined;
+		sendable = new Promise((resolve) => (send = resolve));
 		await appendEntries(ada.store, build, [driven(seam, 1)]);
 		await expect.poll(() => loop.status.waiting, { timeout: 5000 }).toBe(1);
+		expect(loop.status.synced).toBe(false);
+		send();
 		await expect.poll(() => loop.status.synced, { timeout: 5000 }).toBe(true);
 		expect(await outboxRows(ada.store, build)).toEqual([]);
 		expect(loop.status).toMatchObject({ phase: 'idle', waiting: 0, acknowledgedNotBack: 0 });
