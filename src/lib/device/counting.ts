@@ -61,6 +61,7 @@ export async function settled<T>(tx: Writing, work: () => Promise<T>): Promise<T
 	let result: T;
 	try {
 		result = await work();
+		commit(tx);
 	} catch (error) {
 		try {
 			tx.abort();
@@ -75,4 +76,13 @@ export async function settled<T>(tx: Writing, work: () => Promise<T>): Promise<T
 	const failed = await done;
 	if (failed) throw failed.error;
 	return result;
+}
+
+/** Everything was asked for: the browser need not wait until it has told of each request that there is no other. */
+function commit(tx: Writing): void {
+	try {
+		tx.commit();
+	} catch {
+		// It ended by itself, or failed; `done` knows.
+	}
 }
