@@ -7,6 +7,8 @@ import { vitePreprocess } from '@sveltejs/vite-plugin-svelte';
 /** @type {import('@sveltejs/kit').Config} */
 const config = {
 	preprocess: vitePreprocess(),
+	// Otherwise a component without a script brings Svelte's support for version 4 into every page.
+	compilerOptions: { runes: true },
 	kit: {
 		adapter: adapter({ precompress: true }),
 		// The shell is one prerendered page shown under every offline address: with relative asset
