@@ -8,6 +8,7 @@ import type { Line } from '$lib/logbook/fold/line';
 import { highestTame, newBuildRow } from './append';
 import { recount, settled, writing, type Change, type Writing } from './counting';
 import { quiet } from './handle';
+import { endOutboxRows, entriesOf, outboxRowsOf } from './many';
 import {
 	within,
 	type BuildRow,
@@ -115,8 +116,14 @@ async function placeLines(
 	const unplaced = row.lines - row.cursor.seq;
 	const there =
 		unplaced > 0
-			? await Promise.all(page.lines.map(async ({ row: { id } }) => entries.get([build, id])))
+			? await entriesOf(
+					entries,
+					build,
+					page.lines.map(({ row: { id } }) => id)
+				)
 			: [];
+	/** Lines that came back. */
+	const ended: EntryRow[] = [];
 
 	const added = new Map<string, Line[]>();
 	/** Parts in which a line that was here already changed what it counts for. */
@@ -145,7 +152,7 @@ async function placeLines(
 				return;
 			}
 			quiet(entries.put(incoming));
-			quiet(tx.objectStore('outbox').delete([build, here.n, here.id]));
+			ended.push(here);
 			return;
 		}
 		// Another line has this id on the server: that one is in the log. Ours stays, visible and not counted.
@@ -161,8 +168,9 @@ async function placeLines(
 		quiet(entries.put({ ...incoming, finding: incoming.finding ?? 'entry.id_conflict', conflict }));
 		if (!here.conflict) replaced.push(here);
 	});
+	const outbox = tx.objectStore('outbox');
+	await endOutboxRows(outbox, build, ended);
 	for (const { n, id } of replaced) {
-		const outbox = tx.objectStore('outbox');
 		const there = (await outbox.get([build, n, id])) ?? rowFor({ build, n, id }, store.env.now());
 		const kept = without(there, 'due');
 		quiet(outbox.put({ ...kept, state: 'refused', code: 'entry.id_conflict', replaced: true }));
@@ -252,14 +260,17 @@ export async function absorbResults(
 			if (!row) return undefined;
 			const changed = new Map<string, undefined>();
 			const outbox = tx.objectStore('outbox');
-			// All asked for at once: one after the other, a batch would wait for the disk four hundred times.
-			const found = await Promise.all(
-				outcomes.map(async ({ row: { n, id } }) =>
-					Promise.all([outbox.get([build, n, id]), tx.objectStore('entries').get([build, id])])
+			const offers = outcomes.map((outcome) => outcome.row);
+			const [waiting, entries] = await Promise.all([
+				outboxRowsOf(outbox, build, offers),
+				entriesOf(
+					tx.objectStore('entries'),
+					build,
+					offers.map(({ id }) => id)
 				)
-			);
+			]);
 			for (const [i, { row: offered, result }] of outcomes.entries()) {
-				const [there, entry] = found[i] ?? [];
+				const [there, entry] = [waiting[i], entries[i]];
 				// What was offered is the log's line; the row is of the one it replaced here.
 				if (there?.replaced) continue;
 				// Came back in a pull of another tab meanwhile: that is the last word.

@@ -2,6 +2,7 @@
 import { utf8 } from '$lib/logbook/bytes';
 import { makeSeal, type Seal } from '$lib/logbook/seal';
 import { MOST_PUSHED, MOST_PUSHED_BYTES, type Proof } from '$lib/logbook/wire';
+import { entriesOf } from './many';
 import {
 	within,
 	type EntryRow,
@@ -95,9 +96,8 @@ export async function makeBatch(
 	const wanted = keys.slice(0, Math.min(most, MOST_PUSHED));
 	const { entries, seals } = await store.handle.run(async (db) => {
 		const tx = db.transaction(['entries', 'seals'], 'readonly');
-		const found = await Promise.all(
-			wanted.map(async ({ id }) => tx.objectStore('entries').get([build, id]))
-		);
+		const ids = wanted.map(({ id }) => id);
+		const found = await entriesOf(tx.objectStore('entries'), build, ids);
 		const names = new Set(found.flatMap((row) => (row?.seal === undefined ? [] : [row.seal])));
 		const stored = await Promise.all(
 			[...names].map(async (name) => tx.objectStore('seals').get([build, name]))
