@@ -12,7 +12,9 @@ export default defineConfig({
 	// A test that passes the second time has found something.
 	retries: 0,
 	forbidOnly: Boolean(process.env.CI),
-	timeout: 60_000,
+	timeout: 90_000,
+	// Two browsers and a server share two cores; what is late is not what is wrong.
+	expect: { timeout: 15_000 },
 	reporter: 'list',
 	use: {
 		trace: 'retain-on-failure',
