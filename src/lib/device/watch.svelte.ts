@@ -99,6 +99,25 @@ export class BuildList {
 	}
 }
 
+/**
+ * A build in a list, as its log says it is. What the server has not confirmed stays unconfirmed: a build that came in a
+ * file has no role yet, one left stays left, and a log that is only on its way here may know no better than its beginning.
+ */
+export function listingOf(
+	listing: BuildListing,
+	fold: Pick<Build, 'name' | 'crew'> | undefined,
+	person: string
+): BuildListing {
+	const whole = !listing.known || listing.lastSuccess !== undefined;
+	if (!fold || !whole) return listing;
+	const name = fold.name === '' ? listing.name : fold.name;
+	const said = fold.crew.get(person);
+	if (listing.role === null || said === undefined) return { ...listing, name };
+	return said === 'left'
+		? { ...listing, name, role: null, removed: true }
+		: { ...listing, name, role: said };
+}
+
 /** One build: what concerns no seam, folded, and a summary of every seam. */
 export class BuildLog {
 	readonly build: string;
@@ -126,7 +145,10 @@ export class BuildLog {
 		this.#follow();
 		return this.#loaded;
 	}
-	/** Undefined while loading, and for a build that is not on this device. */
+	/**
+	 * Undefined while loading, and for a build that is not on this device. Its name and this person's role are as the log
+	 * says, which hears of a change before the server's list is asked again.
+	 */
 	get listing(): BuildListing | undefined {
 		this.#follow();
 		return this.#listing;
@@ -158,11 +180,12 @@ export class BuildLog {
 	async #read(notices: readonly Notice[]): Promise<void> {
 		const all = notices.length === 0;
 		const parts = notices.flatMap((notice) => notice.parts);
-		this.#listing = await buildHere(this.#store, this.build);
+		const listing = await buildHere(this.#store, this.build);
 		if (all || parts.includes('')) {
 			this.#fold = await foldedBuild(this.#store, this.build);
 			this.#crew = await crewOf(this.#store, this.build);
 		}
+		this.#listing = listing && listingOf(listing, this.#fold, this.#store.person);
 		if (all || parts.some((part) => part !== ''))
 			this.#summaries = await summaries(this.#store, this.build);
 		this.#loaded = true;
