@@ -1,5 +1,7 @@
 import { describe, expect, it } from 'vitest';
-import { EMPTY_BUILD, readBuild } from './build-form';
+import { foldBuild } from '$lib/logbook/fold/build';
+import { BUILD, Scribe } from '../../../../tests/support/scribe';
+import { EMPTY_BUILD, readBuild, typedBuild } from './build-form';
 
 describe('opening a build', () => {
 	it('needs a name and no more', () => {
@@ -17,5 +19,16 @@ describe('opening a build', () => {
 	it('says at the field what is wrong', () => {
 		const read = readBuild({ ...EMPTY_BUILD, about: 'x'.repeat(401) });
 		expect(!read.ok && Object.keys(read.errors)).toEqual(['name', 'about']);
+	});
+});
+
+it('a build shows as text what was typed about it', () => {
+	const scribe = new Scribe();
+	scribe.write('build.opened', { name: 'Yarrow Two', about: 'two-seater' }, { id: BUILD });
+	expect(typedBuild(foldBuild(scribe.lines))).toEqual({
+		name: 'Yarrow Two',
+		about: 'two-seater',
+		place: '',
+		units: 'in'
 	});
 });

@@ -1,5 +1,6 @@
-/** Between what is typed to open a build and the line it becomes. Pure. */
+/** Between what is typed about a build and the lines it becomes. Pure. */
 import * as z from 'zod/mini';
+import type { Build } from '$lib/logbook/fold/build';
 import type { Body } from '$lib/logbook/kinds';
 import { FormReader, type Errors } from '../frame/form-reader';
 
@@ -12,6 +13,14 @@ export const BuildTyped = z.object({
 });
 /** The form as text, nothing read yet. */
 export type BuildTyped = z.output<typeof BuildTyped>;
+
+/** What is kept of a change that is not saved yet. */
+export const BuildDraft = z.object({
+	typed: BuildTyped,
+	opened: z.optional(
+		z.object({ typed: BuildTyped, heads: z.record(z.string(), z.array(z.string())) })
+	)
+});
 
 export const EMPTY_BUILD: BuildTyped = { name: '', about: '', place: '', units: 'in' };
 
@@ -40,4 +49,10 @@ export function readBuild(typed: BuildTyped): BuildRead {
 			...(place !== undefined && { place })
 		}
 	};
+}
+
+/** A build as text, the way it would have been typed. */
+export function typedBuild({ fields, units }: Pick<Build, 'fields' | 'units'>): BuildTyped {
+	const text = (name: string) => (fields.get(name)?.value as string | undefined) ?? '';
+	return { name: text('name'), about: text('about'), place: text('place'), units };
 }

@@ -22,7 +22,7 @@ const SAID: { [K in Kind]: readonly [Body<K>, string] } = {
 	'build.opened': [{ name: 'Yarrow Two' }, 'build opened: Yarrow Two'],
 	'build.described': [
 		{ name: 'Yarrow', rules: { sampling: '1 in 10' } },
-		'build described · Yarrow · 1 rule'
+		'build described (name, rules) · Yarrow'
 	],
 	'crew.joined': [{ person: JO, role: 'builder' }, 'Jo joined the crew as builder'],
 	'crew.role': [

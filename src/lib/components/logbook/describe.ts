@@ -35,11 +35,7 @@ function describeEntry(entry: Entry, names: Names): string {
 		case 'build.opened':
 			return `build opened: ${entry.body.name}`;
 		case 'build.described':
-			return join(
-				'build described',
-				entry.body.name,
-				entry.body.rules && counted(Object.keys(entry.body.rules).length, 'rule')
-			);
+			return join(`build described (${fields(entry.body)})`, entry.body.name);
 		case 'crew.joined':
 			return `${names.person(entry.body.person)} joined the crew as ${ROLE_WORDS[entry.body.role]}`;
 		case 'crew.role':
@@ -299,7 +295,9 @@ const FIELD_WORDS: Readonly<Record<string, string>> = {
 	head: 'near or far side',
 	people: 'how many people',
 	closes: 'closes the structure',
-	overrides: 'ranges of holes'
+	overrides: 'ranges of holes',
+	about: 'what it is',
+	outline: 'which part'
 };
 
 function hours(minutes: number): string {

@@ -1,21 +1,21 @@
 import { describe, expect, it } from 'vitest';
 import { foldSeam } from '$lib/logbook/fold/seam';
 import { ASSEMBLY, idOf, Scribe } from '../../../../tests/support/scribe';
+import { changedFields as changedIn, follow, headsOfFields, settlement } from './opened';
 import {
 	changedBody,
-	changedFields,
 	emptyRange,
 	emptySeam,
-	follow,
-	headsOfFields,
-	openedOf,
+	openedSeam,
 	nextSeam,
 	plannedBody,
 	readSeam,
-	settledBody,
+	SEAM_FORM,
 	typedOf,
 	type SeamTyped
 } from './seam-form';
+
+const changedFields = (before: SeamTyped, after: SeamTyped) => changedIn(SEAM_FORM, before, after);
 
 const RANGE = idOf(77);
 
@@ -129,7 +129,6 @@ describe('changing a seam', () => {
 		expect(shown).toMatchObject({ pitch: '3/4 in', rows: '2', count: '64' });
 		expect(shown.ranges[0]).toMatchObject({ holes: '5–8', callout: 'MS20470AD4-5' });
 		expect(changedFields(shown, { ...shown, name: ` ${shown.name} ` })).toEqual([]);
-		expect(changedBody(read(shown, fold()), [])).toBeUndefined();
 	});
 
 	it('carries only what was changed, standing on what stated it', () => {
@@ -141,7 +140,7 @@ describe('changing a seam', () => {
 			callout: 'MS20470AD4-5',
 			note: null
 		});
-		expect(headsOfFields(openedOf(fold()), fields)).toEqual([line.id]);
+		expect(headsOfFields(openedSeam(fold()), fields)).toEqual([line.id]);
 	});
 
 	it('empties what only several rows have, when one row remains', () => {
@@ -171,9 +170,13 @@ describe('changing a seam', () => {
 
 	it('takes over what others change while the form is open, but not what is being typed', () => {
 		const { scribe, seam, line, fold } = planned({ callout: 'MS20470AD4-4', note: 'deburr' });
-		const opened = openedOf(fold());
+		const opened = openedSeam(fold());
 		const mine = { ...opened.typed, callout: 'MS20470AD4-6' };
-		expect(follow(opened, mine, fold())).toEqual({ opened, typed: mine, both: [] });
+		expect(follow(SEAM_FORM, opened, mine, openedSeam(fold()))).toEqual({
+			opened,
+			typed: mine,
+			both: []
+		});
 
 		const theirs = scribe.write(
 			'seam.changed',
@@ -184,7 +187,7 @@ describe('changing a seam', () => {
 			},
 			{ seam, on: [line] }
 		);
-		const followed = follow(opened, mine, fold());
+		const followed = follow(SEAM_FORM, opened, mine, openedSeam(fold()));
 		expect(followed.both).toEqual(['callout']);
 		expect(followed.typed).toMatchObject({
 			callout: 'MS20470AD4-6',
@@ -201,11 +204,13 @@ describe('changing a seam', () => {
 		const { scribe, seam, line, fold } = planned();
 		scribe.write('seam.changed', { callout: 'MS20470AD4-5' }, { seam, on: [line] });
 		scribe.write('seam.changed', { callout: 'MS20470AD4-6' }, { seam, on: [line] });
-		const field = fold().fields.get('callout');
-		expect(field?.differs).toBe(true);
-		scribe.write('seam.changed', settledBody('callout', field?.heads[0]?.value), {
+		const { fields } = fold();
+		expect(fields.get('callout')?.differs).toBe(true);
+		const kept = fields.get('callout')?.heads[0]?.line ?? '';
+		const { body, on } = settlement<'seam.changed'>(fields, 'callout', kept);
+		scribe.write('seam.changed', body, {
 			seam,
-			on: scribe.lines.filter(({ id }) => field?.heads.some((head) => head.line === id))
+			on: scribe.lines.filter(({ id }) => on.includes(id))
 		});
 		expect(fold().fields.get('callout')).toMatchObject({ differs: false, value: 'MS20470AD4-5' });
 	});

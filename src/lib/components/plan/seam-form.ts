@@ -9,6 +9,7 @@ import { MOST_HOLES } from '$lib/logbook/scalars';
 import { formatLength } from '$lib/rivet/length';
 import { FormReader, type Errors } from '../frame/form-reader';
 import { holesNumbered, numbersOf, plannedHoles, type Numbered } from './hole-numbers';
+import { bodyOf, openedWith, type FormOf, type Opened } from './opened';
 
 const typedText = z.string().check(z.maxLength(4000));
 const SheetTyped = z.object({
@@ -356,132 +357,28 @@ export function plannedBody(
 	};
 }
 
-/** For each input of the form the field it states. */
-const FIELD_OF: Partial<Record<keyof SeamTyped, string>> = { sheets: 'stack' };
-/** Not changed by a line about the plan: holes are added and retired. */
-const FIXED: ReadonlySet<keyof SeamTyped> = new Set(['count', 'first', 'ranges']);
-
-/** Names of the plan fields in which two versions of the form differ. */
-export function changedFields(opened: SeamTyped, typed: SeamTyped): string[] {
-	const [before, after] = [effective(opened), effective(typed)];
-	const changed: string[] = [];
-	for (const input of Object.keys(after) as (keyof SeamTyped)[]) {
-		if (FIXED.has(input)) continue;
-		if (!alike(before[input], after[input])) changed.push(FIELD_OF[input] ?? input);
+export const SEAM_FORM: FormOf<SeamTyped> = {
+	named: { sheets: 'stack' },
+	lists: { ranges: 'overrides' },
+	// Holes are added and retired.
+	fixed: ['count', 'first'],
+	// Only several rows have a spacing, a layout and a way to number.
+	effective: (typed) => {
+		if (typed.pattern === 'rows') return typed;
+		const { rows, perRow, layout, numbering, rowSpacing } = emptySeam('', 0);
+		return { ...typed, rows, perRow, layout, numbering, rowSpacing };
 	}
-	const ids = new Set([...before.ranges, ...after.ranges].map(({ id }) => id));
-	for (const id of ids) {
-		const find = (typed: SeamTyped) => typed.ranges.find((range) => range.id === id);
-		if (!alike(find(before), find(after))) changed.push(`overrides.${id}`);
-	}
-	return changed;
+};
+
+export function openedSeam(seam: Seam): Opened<SeamTyped> {
+	return openedWith(typedOf(seam), seam.fields);
 }
 
-/** What the form hides does not count: only several rows have a spacing, a layout and a way to number. */
-function effective(typed: SeamTyped): SeamTyped {
-	if (typed.pattern === 'rows') return typed;
-	const { rows, perRow, layout, numbering, rowSpacing } = emptySeam('', 0);
-	return { ...typed, rows, perRow, layout, numbering, rowSpacing };
-}
-
-function alike(a: unknown, b: unknown): boolean {
-	return trimmed(a) === trimmed(b);
-}
-function trimmed(value: unknown): string {
-	return JSON.stringify(value, (_, inner: unknown) =>
-		typeof inner === 'string' ? inner.trim() : inner
+/** Only the fields named; null empties one. */
+export function changedBody(values: PlanValues, fields: readonly string[]): Body<'seam.changed'> {
+	return bodyOf<'seam.changed'>(fields, (field) =>
+		field.startsWith('overrides.')
+			? values.overrides.get(field.slice('overrides.'.length))
+			: values[field as keyof PlanValues]
 	);
-}
-
-/** Only the fields named; null empties one. Undefined when none is named. */
-export function changedBody(
-	values: PlanValues,
-	fields: readonly string[]
-): Body<'seam.changed'> | undefined {
-	if (fields.length === 0) return undefined;
-	const body: Record<string, unknown> = {};
-	const overrides: Record<string, SeamOverride | null> = {};
-	for (const field of fields) {
-		if (field.startsWith('overrides.')) {
-			const id = field.slice('overrides.'.length);
-			overrides[id] = values.overrides.get(id) ?? null;
-		} else body[field] = values[field as keyof PlanValues] ?? null;
-	}
-	return {
-		...(body as Body<'seam.changed'>),
-		...(Object.keys(overrides).length > 0 && { overrides })
-	};
-}
-
-/** The lines that stated these fields when the form was opened: what a change of them stands on. */
-export function headsOfFields(
-	{ heads }: Pick<Opened, 'heads'>,
-	names: readonly string[]
-): string[] {
-	return [...new Set(names.flatMap((name) => heads[name] ?? []))].sort();
-}
-
-/** A form as it was opened: its text, and per field the lines that stated it then. */
-export interface Opened {
-	readonly typed: SeamTyped;
-	readonly heads: Readonly<Record<string, readonly string[]>>;
-}
-
-export function openedOf(seam: Seam): Opened {
-	const heads = [...seam.fields].map(([name, field]) => [
-		name,
-		field.heads.map(({ line }) => line)
-	]);
-	return { typed: typedOf(seam), heads: Object.fromEntries(heads) as Opened['heads'] };
-}
-
-/**
- * Takes over what others changed while the form was open, but never what is being typed: a field changed on both sides
- * stays as typed and stands in `both`. Saved, it stands on what this person saw, so both values are shown.
- */
-export function follow(
-	opened: Opened,
-	typed: SeamTyped,
-	seam: Seam
-): { readonly opened: Opened; readonly typed: SeamTyped; readonly both: readonly string[] } {
-	const now = openedOf(seam);
-	const names = new Set([...Object.keys(opened.heads), ...Object.keys(now.heads)]);
-	const moved = [...names].filter((name) => !alike(opened.heads[name], now.heads[name]));
-	const mine = new Set(changedFields(opened.typed, typed));
-	const both = moved.filter((name) => mine.has(name));
-	const theirs = moved.filter((name) => !mine.has(name));
-	if (theirs.length === 0) return { opened, typed, both };
-	const heads = Object.fromEntries(
-		[...names].map((name) => [name, (both.includes(name) ? opened : now).heads[name] ?? []])
-	);
-	return {
-		opened: { typed: overlaid(opened.typed, now.typed, theirs), heads },
-		typed: overlaid(typed, now.typed, theirs),
-		both
-	};
-}
-
-/** `typed` with the inputs of some fields as they are in `from`. */
-function overlaid(typed: SeamTyped, from: SeamTyped, fields: readonly string[]): SeamTyped {
-	let result = typed;
-	for (const field of fields) {
-		if (field.startsWith('overrides.')) {
-			const id = field.slice('overrides.'.length);
-			const theirs = from.ranges.filter((range) => range.id === id);
-			const ranges = [...result.ranges.filter((range) => range.id !== id), ...theirs];
-			result = { ...result, ranges: ranges.sort((a, b) => (a.id < b.id ? -1 : 1)) };
-			continue;
-		}
-		const input = field === 'stack' ? 'sheets' : (field as keyof SeamTyped);
-		if (input in from) result = { ...result, [input]: from[input] };
-	}
-	return result;
-}
-
-/** A line that settles a field stated twice: the value of one head, standing on all of them. */
-export function settledBody(field: string, value: unknown): Body<'seam.changed'> {
-	if (!field.startsWith('overrides.')) return { [field]: value ?? null };
-	return {
-		overrides: { [field.slice('overrides.'.length)]: (value ?? null) as SeamOverride | null }
-	};
 }

@@ -3,6 +3,7 @@ import type { Length, Prep, SeamOverride, Sheet } from '$lib/logbook/kinds';
 import { formatLength } from '$lib/rivet/length';
 import { METHOD_WORDS, stamped } from '../logbook/words';
 import { counted } from '../frame/numbers';
+import type { PlannedStep } from './assembly-form';
 import { numbersOf, type Numbered } from './hole-numbers';
 
 type Options = readonly (readonly [value: string, words: string])[];
@@ -42,6 +43,27 @@ export const HEAD_OPTIONS: Options = [
 	['near', 'near side'],
 	['far', 'far side']
 ];
+/** Which part an assembly is: the names of outlines, of which an older or newer app may know others. */
+export const PART_OPTIONS: Options = [
+	['', 'not said'],
+	['wing', 'wing'],
+	['aileron', 'aileron'],
+	['flap', 'flap'],
+	['stabilizer', 'stabilizer'],
+	['elevator', 'elevator'],
+	['fin', 'fin'],
+	['rudder', 'rudder'],
+	['fuselage', 'fuselage'],
+	['tail_cone', 'tail cone'],
+	['tank', 'tank'],
+	['cowling', 'cowling'],
+	['other', 'another part']
+];
+export const STEP_VALUE_OPTIONS: readonly (readonly ['' | 'text' | 'number', string])[] = [
+	['', 'that it was done'],
+	['number', 'a number'],
+	['text', 'a few words']
+];
 
 const FIELD_WORDS: Readonly<Record<string, string>> = {
 	name: 'Name',
@@ -50,7 +72,7 @@ const FIELD_WORDS: Readonly<Record<string, string>> = {
 	about: 'What it is',
 	units: 'Units',
 	place: 'Place',
-	outline: 'Outline',
+	outline: 'Which part',
 	callout: 'Rivet',
 	stack: 'Sheets',
 	method: 'Method',
@@ -105,7 +127,7 @@ export function valueWords(field: string, value: unknown, names: ValueNames): st
 	if (value === undefined || value === null) return 'empty';
 	const [map] = field.split('.');
 	if (map === 'overrides') return overrideWords(value as SeamOverride, names);
-	if (map === 'steps') return (value as { text: string }).text;
+	if (map === 'steps') return stepWords(value as PlannedStep);
 	switch (field) {
 		case 'assembly':
 			return names.assembly(value as string);
@@ -137,8 +159,21 @@ const OPTIONS_OF: Readonly<Record<string, Options>> = {
 	pattern: PATTERN_OPTIONS,
 	layout: LAYOUT_OPTIONS,
 	numbering: NUMBERING_OPTIONS,
-	head: HEAD_OPTIONS
+	head: HEAD_OPTIONS,
+	outline: PART_OPTIONS
 };
+
+function stepWords({ text, order, value, unit, drawing }: PlannedStep): string {
+	return [
+		text,
+		value === 'number' && ['with a number', unit && `in ${unit}`].filter(Boolean).join(' '),
+		value === 'text' && 'with a few words',
+		drawing && `drawing ${drawing}`,
+		order !== undefined && `order ${order}`
+	]
+		.filter(Boolean)
+		.join(', ');
+}
 
 function stackWords(stack: readonly Sheet[]): string {
 	return stack
