@@ -47,8 +47,10 @@ export class Caller {
 	async person(): Promise<{ id: string; name: string; email: string } | undefined> {
 		const answer = await this.send('/api/session');
 		if (answer.status !== 200) return undefined;
-		return ((await answer.json()) as { person: { id: string; name: string; email: string } })
-			.person;
+		const { person } = (await answer.json()) as {
+			person: { id: string; name: string; email: string } | null;
+		};
+		return person ?? undefined;
 	}
 
 	/** Calls the API as the app does. @throws on anything but 200 */

@@ -196,10 +196,10 @@ describe('over HTTP', () => {
 			{ person: { id: PERSON, name: 'Ada', email: 'a@example.org' } },
 			{ id: PERSON, name: 'Ada' }
 		],
-		[401, { code: 'session.none', says: 'x' }, 'nobody'],
+		[401, { code: 'session.none', says: 'x' }, 'signed_out'],
 		[401, { error: 'proxy' }, 'unknown'],
 		[503, { code: 'request.unavailable', says: 'x' }, 'unknown'],
-		[200, { person: null }, 'unknown']
+		[200, { person: null }, 'nobody']
 	])('%i %j: who is signed in', async (status, body, expected) => {
 		expect(await askSession(() => Promise.resolve(Response.json(body, { status })))).toEqual(
 			expected

@@ -26,6 +26,8 @@ export class Session {
 	#store = $state.raw<DeviceStore>();
 	#loop = $state.raw<SyncLoop>();
 	#problem = $state.raw<DeviceError>();
+	/** One thing after the other: two who open a store at a time would leave a second loop running. */
+	#turn: Promise<unknown> = Promise.resolve();
 
 	constructor(options: SessionOptions = {}) {
 		this.#options = options;
@@ -50,36 +52,13 @@ export class Session {
 	}
 
 	/** Opens the store of whoever was here last, at once; then asks the server, which may know of somebody else. */
-	async start(): Promise<void> {
-		try {
-			const last = await lastPerson({ prefix: this.#options.prefix ?? '' });
-			if (last) {
-				await this.#become(last.person, last.name);
-				this.#standing = 'offline';
-			}
-		} catch (error) {
-			this.#fail(error);
-		}
-		await this.check();
+	start(): Promise<void> {
+		return this.#inTurn(() => this.#start());
 	}
 
 	/** Asks the server again: after signing in, and when the loop reports that somebody else is signed in. */
-	async check(): Promise<void> {
-		const said = await (this.#options.ask ?? askSession)();
-		if (typeof said === 'string') {
-			const stays = said === 'nobody' ? 'expired' : 'offline';
-			this.#standing = this.#person ? stays : 'nobody';
-			return;
-		}
-		try {
-			if (this.#person?.id !== said.id || !this.#store) await this.#become(said.id, said.name);
-			this.#person = { id: said.id, name: said.name };
-			this.#standing = 'signed_in';
-		} catch (error) {
-			this.#person = { id: said.id, name: said.name };
-			this.#standing = 'signed_in';
-			this.#fail(error);
-		}
+	check(): Promise<void> {
+		return this.#inTurn(() => this.#check());
 	}
 
 	/** What would be lost with the store on this device. */
@@ -92,7 +71,61 @@ export class Session {
 	 * The session with the server is ended by the sign-out form, not here.
 	 * @returns what is unsent when that kept the store from being deleted; nothing was changed then
 	 */
-	async leave(how: 'keep' | { readonly delete: number }): Promise<Unsent | undefined> {
+	leave(how: 'keep' | { readonly delete: number }): Promise<Unsent | undefined> {
+		return this.#inTurn(() => this.#leave(how));
+	}
+
+	/** Lets go of everything; the store stays as it is. */
+	stop(): void {
+		this.#loop?.stop();
+		this.#store?.close();
+		this.#loop = undefined;
+		this.#store = undefined;
+	}
+
+	#inTurn<T>(what: () => Promise<T>): Promise<T> {
+		const turn = this.#turn.then(what, what);
+		this.#turn = turn;
+		return turn;
+	}
+
+	async #start(): Promise<void> {
+		try {
+			const last = await lastPerson({ prefix: this.#options.prefix ?? '' });
+			if (last) {
+				await this.#become(last.person, last.name);
+				this.#standing = 'offline';
+			}
+		} catch (error) {
+			this.#fail(error);
+		}
+		await this.#check();
+	}
+
+	async #check(): Promise<void> {
+		const said = await (this.#options.ask ?? askSession)();
+		if (typeof said === 'string') {
+			// Whoever logs here goes on. That they are signed out only a 401 may say, which the loop hears at once.
+			if (!this.#person) this.#standing = 'nobody';
+			else if (said === 'signed_out') this.#standing = 'expired';
+			else if (this.#standing !== 'expired') this.#standing = 'offline';
+			return;
+		}
+		try {
+			if (this.#person?.id !== said.id || !this.#store) await this.#become(said.id, said.name);
+			this.#person = { id: said.id, name: said.name };
+			this.#standing = 'signed_in';
+			// Just now the server answers, to this person: nothing waits for the next try.
+			const phase = this.#loop?.status.phase;
+			if (phase !== 'idle' && phase !== 'syncing') void this.#loop?.tryNow();
+		} catch (error) {
+			this.#person = { id: said.id, name: said.name };
+			this.#standing = 'signed_in';
+			this.#fail(error);
+		}
+	}
+
+	async #leave(how: 'keep' | { readonly delete: number }): Promise<Unsent | undefined> {
 		const store = this.#store;
 		if (!store) return undefined;
 		this.#loop?.stop();
@@ -109,14 +142,6 @@ export class Session {
 		this.#person = undefined;
 		this.#standing = 'nobody';
 		return undefined;
-	}
-
-	/** Lets go of everything; the store stays as it is. */
-	stop(): void {
-		this.#loop?.stop();
-		this.#store?.close();
-		this.#loop = undefined;
-		this.#store = undefined;
 	}
 
 	async #become(id: string, name: string): Promise<void> {

@@ -29,7 +29,8 @@ export const GUARDS: Readonly<Record<string, Guard>> = {
 	'/(desk)/sign-in': 'public',
 	// Also for somebody whose session ran out: signing out must always work.
 	'/(desk)/sign-out': 'public',
-	'/api/session': 'person',
+	// Answers only who asks, also when that is nobody.
+	'/api/session': 'public',
 	'/api/builds': 'person',
 	'/api/builds/[build]/entries': 'person',
 	'/api/builds/[build]/have': 'person',
