@@ -128,7 +128,7 @@ export interface LoggedLine {
 	readonly excluded: boolean;
 	readonly finding?: LineFinding;
 	readonly outbox?: OutboxRow;
-	/** What the server has under this id instead of ours. */
+	/** Ours under this id, where the log has another line: `text` is that one's. */
 	readonly conflict?: { readonly text: string; readonly hash: string };
 }
 

@@ -67,6 +67,12 @@ export interface WayOfLine {
 
 /** Where a line is on its way to the server; undefined once it is in the server's log. */
 export function wayOf({ outbox, seq, finding }: LoggedLine): WayOfLine | undefined {
+	if (finding === 'entry.id_conflict')
+		return {
+			look: 'grease',
+			words: 'its id was used twice',
+			says: 'This line is in the log. Another was written under the same id and is on this device only: it stands under “Not accepted”.'
+		};
 	if (finding !== undefined)
 		return {
 			look: 'grease',
