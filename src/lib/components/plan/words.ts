@@ -3,6 +3,7 @@ import type { Length, Prep, SeamOverride, Sheet } from '$lib/logbook/kinds';
 import { formatLength } from '$lib/rivet/length';
 import { METHOD_WORDS, stamped } from '../logbook/words';
 import { counted } from '../frame/numbers';
+import { OUTLINE_NAMES } from '../wall/outline';
 import type { PlannedStep } from './assembly-form';
 import { numbersOf, type Numbered } from './hole-numbers';
 
@@ -43,21 +44,12 @@ export const HEAD_OPTIONS: Options = [
 	['near', 'near side'],
 	['far', 'far side']
 ];
-/** Which part an assembly is: the names of outlines, of which an older or newer app may know others. */
+/** Which part an assembly is: the outlines the wall draws. */
 export const PART_OPTIONS: Options = [
 	['', 'not said'],
-	['wing', 'wing'],
-	['aileron', 'aileron'],
-	['flap', 'flap'],
-	['stabilizer', 'stabilizer'],
-	['elevator', 'elevator'],
-	['fin', 'fin'],
-	['rudder', 'rudder'],
-	['fuselage', 'fuselage'],
-	['tail_cone', 'tail cone'],
-	['tank', 'tank'],
-	['cowling', 'cowling'],
-	['other', 'another part']
+	...OUTLINE_NAMES.map(
+		(name) => [name, name === 'other' ? 'another part' : name.replaceAll('_', ' ')] as const
+	)
 ];
 export const STEP_VALUE_OPTIONS: readonly (readonly ['' | 'text' | 'number', string])[] = [
 	['', 'that it was done'],

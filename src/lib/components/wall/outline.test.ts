@@ -22,7 +22,7 @@ describe.each(OUTLINE_NAMES)('the outline of %s', (name) => {
 			for (const mark of marks) expect(isInside(mark, edge), `${name} ${mark.join()}`).toBe(true);
 			for (const [i, [x, y]] of marks.entries())
 				for (const [ox, oy] of marks.slice(i + 1))
-					expect(Math.hypot(x - ox, y - oy), `${name} ${x},${y} ${ox},${oy}`).toBeGreaterThan(5);
+					expect(Math.hypot(x - ox, y - oy), `${name} ${x},${y} ${ox},${oy}`).toBeGreaterThan(3);
 		}
 	});
 

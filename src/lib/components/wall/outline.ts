@@ -68,7 +68,7 @@ const SHAPES: Readonly<Record<string, Shape>> = {
 			[232, 62],
 			[14, 72]
 		],
-		inside: upright([62, 116, 170], 44, 58)
+		inside: upright([62, 116, 170], 47, 53)
 	},
 	flap: {
 		edge: box(8, 28, 232, 74, 12),
@@ -84,7 +84,7 @@ const SHAPES: Readonly<Record<string, Shape>> = {
 			[114, 78],
 			[4, 78]
 		],
-		inside: upright([56, 88, 120, 152, 184], 36, 62)
+		inside: upright([56, 88, 152, 184], 36, 60)
 	},
 	elevator: {
 		edge: [
@@ -99,25 +99,25 @@ const SHAPES: Readonly<Record<string, Shape>> = {
 	},
 	fin: {
 		edge: [
-			[72, 92],
-			[112, 8],
-			[154, 8],
-			[186, 92]
+			[46, 94],
+			[112, 6],
+			[168, 6],
+			[206, 94]
 		],
-		inside: level([36, 58], 112, 156)
+		inside: level([36, 60], 116, 156)
 	},
 	rudder: {
 		edge: [
-			[88, 6],
-			[122, 6],
-			[122, 20],
-			[160, 20],
-			[172, 94],
-			[104, 94],
-			[104, 36],
-			[88, 36]
+			[62, 4],
+			[112, 4],
+			[112, 26],
+			[176, 26],
+			[196, 96],
+			[88, 96],
+			[88, 46],
+			[62, 46]
 		],
-		inside: level([46, 68], 120, 152)
+		inside: level([54, 72], 112, 162)
 	},
 	fuselage: {
 		edge: [
@@ -197,7 +197,7 @@ export function isRightHand(name: string): boolean {
 	return /^(right|rh|stbd|starboard)\b/i.test(name.trim());
 }
 
-/** Marks at equal steps along each path, as many on each as its share of the whole length. */
+/** Marks at equal steps along each path, the first of which is closed, as many on each as its share of the length. */
 function spread(paths: readonly (readonly Point[])[], count: number): Point[] {
 	const lengths = paths.map(lengthOf);
 	const whole = lengths.reduce((sum, length) => sum + length, 0);
@@ -209,8 +209,19 @@ function spread(paths: readonly (readonly Point[])[], count: number): Point[] {
 		// What is due up to the end of this path, less what stands already: the shares add up to `count`.
 		const here = Math.round((before / whole) * count) - placed;
 		placed += here;
-		return Array.from({ length: here }, (_, k) => along(path, ((k + 0.5) / here) * length));
+		const from = (phase: number) =>
+			Array.from({ length: here }, (_, k) => along(path, ((k + phase) / here) * length));
+		return i === 0 ? roomiest(PHASES.map(from)) : from(0.5);
 	});
+}
+
+const PHASES = [0.5, 0.6, 0.7, 0.8, 0.9, 0, 0.1, 0.2, 0.3, 0.4];
+
+/** The one whose nearest two marks lie furthest apart: around a sharp corner they come close. */
+function roomiest(choices: readonly Point[][]): Point[] {
+	const room = (marks: readonly Point[]) =>
+		Math.min(...marks.map((mark, k) => distance(mark, marks[(k + 1) % marks.length] as Point)));
+	return choices.reduce((best, other) => (room(other) > room(best) ? other : best));
 }
 
 function lengthOf(path: readonly Point[]): number {

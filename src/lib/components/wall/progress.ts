@@ -5,6 +5,8 @@ import { totalsOf, type SeamSummary, type Totals } from '$lib/logbook/fold/summa
 export interface AssemblyProgress {
 	readonly id: string;
 	readonly name: string;
+	/** Name of the shape it is drawn as. */
+	readonly outline?: string;
 	readonly order: number;
 	/** Its plan is here; seams can name an assembly whose line has not arrived. */
 	readonly known: boolean;
@@ -26,10 +28,21 @@ export function progressOf(
 		if (list) list.push(summary);
 		else byAssembly.set(summary.assembly, [summary]);
 	}
-	const known = assemblies.map(({ id, name, order, retired, closed }): AssemblyProgress => {
+	const known = assemblies.map((assembly): AssemblyProgress => {
+		const { id, name, outline, order, retired, closed } = assembly;
 		const seams = (byAssembly.get(id) ?? []).sort(bySeamOrder);
 		byAssembly.delete(id);
-		return { id, name, order, known: true, retired, closed, totals: totalsOf(seams), seams };
+		return {
+			id,
+			name,
+			...(outline !== undefined && { outline }),
+			order,
+			known: true,
+			retired,
+			closed,
+			totals: totalsOf(seams),
+			seams
+		};
 	});
 	const stray = [...byAssembly.values()].flat().sort(bySeamOrder);
 	if (stray.length === 0) return known;
