@@ -1,9 +1,9 @@
 /** What a crew does in an evening: sets up, drives, looks, and goes home. */
 import type { Body, SeamOverride } from '$lib/logbook/kinds';
 import { found, limitsFor, noteDefect, read } from './faults';
-import { localTime, wallTime, type Apart, type Hole } from './pen';
+import type { Apart, Hole } from './pen';
 import { overrideAt, thirtySeconds, type Crew, type Seam, type Shop } from './shop';
-import { ask, closeIfReady, visit } from './visits';
+import { ask, BETWEEN_VISITS, closeIfReady, visit } from './visits';
 import { BARS, CHANGES, CHEERS, LEFT_OPEN, NOTES, TOOLS } from './words';
 
 type Driven = Body<'holes.driven'>;
@@ -37,13 +37,13 @@ export class Evenings {
 		const { pen } = shop;
 		const { random } = pen;
 		shop.evening++;
-		pen.clock = localTime(day, 19 * 60 + random.between(0, 50));
+		pen.clock = pen.localTime(day, 19 * 60 + random.between(0, 50));
 		this.#atHand = undefined;
 		this.#sealant = undefined;
 		const crew = this.#whoIsThere();
 		const began = pen.clock;
 		shop.doWhatIsDue();
-		const end = localTime(day, 22 * 60 + 30);
+		const end = pen.localTime(day, 22 * 60 + 30);
 		const touched = new Set<Seam>();
 		let driven = 0;
 		// Sealant keeps nobody waiting: some evenings go to whatever is driven wet.
@@ -57,8 +57,8 @@ export class Evenings {
 		for (const seam of touched) this.#lookAt(seam, crew);
 		for (const assembly of shop.finished) closeIfReady(shop, assembly);
 		this.#goHome(crew, day, began);
-		if (shop.evening % 12 === 0) {
-			pen.clock = localTime(day + 1, 10 * 60 + random.between(0, 60));
+		if (shop.evening % BETWEEN_VISITS === 0) {
+			pen.clock = pen.localTime(day + 1, 10 * 60 + random.between(0, 60));
 			visit(shop);
 		}
 	}
@@ -96,7 +96,7 @@ export class Evenings {
 			this.#leaveOpen(seam, holes, crew, override.leaveOpen, 'planned');
 			return 0;
 		}
-		if (random.chance(0.012)) {
+		if (this.#shop.seldom('left open', 0.012)) {
 			const few = holes.slice(0, random.between(1, 2));
 			seam.next -= holes.length - few.length;
 			this.#leaveOpen(seam, few, crew, random.pick(LEFT_OPEN), 'found');
@@ -135,7 +135,7 @@ export class Evenings {
 		seam.started = true;
 		const { holes, stack } = seam.plan.body;
 		seam.holes = Array.from({ length: holes.count }, (_, i) => ({ index: i + 1, heads: [] }));
-		if (random.chance(0.25)) this.#changePlan(seam, crew);
+		if (this.#shop.seldom('changed', 0.25)) this.#changePlan(seam, crew);
 		if (random.chance(0.06)) {
 			const at = random.between(1, holes.count - 1);
 			const [gone] = seam.holes.splice(at, 1);
@@ -158,16 +158,21 @@ export class Evenings {
 	}
 
 	#changePlan(seam: Seam, crew: Crew): void {
-		const { pen } = this.#shop;
+		const shop = this.#shop;
+		const { pen } = shop;
 		const { random } = pen;
-		const on = seam.plan.body.note === undefined ? [] : [seam.id];
+		const { id } = seam;
+		const on = seam.plan.body.note === undefined ? [] : [id];
 		const known = pen.apart([]);
 		const note = random.pick(CHANGES);
-		pen.write(crew.device, 'seam.changed', { note, revision: 'B' }, { seam: seam.id, on });
+		const one = pen.write(crew.device, 'seam.changed', { note, revision: 'B' }, { seam: id, on });
 		const other = this.#otherDevice(crew);
-		if (!other || !this.#shop.seldom('plan', 0.15)) return;
-		const differs = `${note}; ask about the end holes first`;
-		pen.write(other, 'seam.changed', { note: differs }, { seam: seam.id, on, apart: known });
+		if (!other || !shop.seldom('plan', 0.15)) return;
+		const differs = { note: `${note}; ask about the end holes first` };
+		const two = pen.write(other, 'seam.changed', differs, { seam: id, on, apart: known });
+		shop.laterAt(seam, random.between(1, 4), () => {
+			pen.write(shop.owner, 'seam.changed', differs, { seam: id, on: [one, two] });
+		});
 	}
 
 	#finish(seam: Seam, crew: Crew): void {
@@ -226,7 +231,7 @@ export class Evenings {
 		const used = this.#asUsed(seam, crew, override);
 		pen.wait(holes.length * 30, holes.length * 70);
 
-		if (this.#shop.seldom('forgotten', 0.012)) {
+		if (!this.#shop.isLate && this.#shop.seldom('forgotten', 0.012)) {
 			this.#forget(seam, holes, crew, used);
 			return;
 		}
@@ -257,7 +262,9 @@ export class Evenings {
 				: undefined;
 			read(shop, crew.device, seam, one, crew.bucker ?? crew.shooter, wrong);
 			if (wrong) noteDefect(shop, crew, seam, [one], wrong);
-		} else if (random.chance(0.06)) noteDefect(shop, crew, seam, [one]);
+		} else if (shop.isLate && shop.seldom('cracked', 0))
+			noteDefect(shop, crew, seam, [one], 'cracked');
+		else if (random.chance(0.06)) noteDefect(shop, crew, seam, [one]);
 	}
 
 	/** A thumb on the wrong key: struck at once, with the reason. */
@@ -280,12 +287,12 @@ export class Evenings {
 	/** Driven tonight, written down another evening. */
 	#forget(seam: Seam, holes: readonly Hole[], crew: Crew, used: Omit<Driven, 'holes'>): void {
 		const shop = this.#shop;
-		const at = wallTime(shop.pen.clock);
+		const at = shop.pen.wallTime();
 		shop.laterAt(seam, shop.pen.random.between(1, 3), () => {
 			shop.pen.wait(20, 60);
-			const when = shop.pen.random.chance(0.8)
-				? ({ is: 'exact', at } as const)
-				: ({ is: 'about', date: at.slice(0, 10) } as const);
+			const when = shop.seldom('about', 0.2)
+				? ({ is: 'about', date: at.slice(0, 10) } as const)
+				: ({ is: 'exact', at } as const);
 			shop.pen.hold(crew.device, 'holes.driven', seam.id, holes, used, { when });
 		});
 	}
@@ -302,8 +309,6 @@ export class Evenings {
 		const { pen } = shop;
 		const kept = holes[0]?.heads[0] ?? '';
 		const double = pen.hold(other, 'holes.driven', seam.id, holes, used, { apart: known });
-		// The first stays as it is, so that there is one to be seen.
-		if (shop.seldom('double that stays', 0.2)) return;
 		shop.laterAt(seam, pen.random.between(1, 5), () => {
 			pen.write(
 				other,
@@ -334,7 +339,6 @@ export class Evenings {
 			{ reason: pen.random.pick(LEFT_OPEN) },
 			{ apart: known }
 		);
-		if (shop.seldom('contest that stays', 0.3)) return;
 		shop.laterAt(seam, pen.random.between(1, 6), () => {
 			pen.hold(crew.device, 'holes.driven', seam.id, one, {
 				...this.#asUsed(seam, crew, undefined),
@@ -443,7 +447,7 @@ export class Evenings {
 		this.#sealant ??= pen.write(crew.device, 'sealant.mixed', {
 			product: 'polysulfide, two parts, class B',
 			batch: this.#lot('S'),
-			mixedAt: wallTime(pen.clock),
+			mixedAt: pen.wallTime(),
 			minutes: 120
 		});
 		return this.#sealant;
@@ -485,10 +489,10 @@ export class Evenings {
 		pen.wait(30, 120);
 		pen.write(crew.device, 'time.worked', {
 			people: [...new Set([crew.shooter, ...(crew.bucker === undefined ? [] : [crew.bucker])])],
-			day: wallTime(localTime(day, 720)).slice(0, 10),
+			day: pen.wallTime(pen.localTime(day, 720)).slice(0, 10),
 			minutes: Math.round((pen.clock - began) / 60_000),
-			from: wallTime(began),
-			to: wallTime(pen.clock)
+			from: pen.wallTime(began),
+			to: pen.wallTime()
 		});
 	}
 

@@ -4,7 +4,7 @@ import { NM_PER_THOU } from '$lib/rivet/length';
 import type { Device } from './crew';
 import type { Hole } from './pen';
 import { thirtySeconds, type Crew, type Seam, type Shop } from './shop';
-import { FAULTS_SEEN, LIMITS, REFERRED } from './words';
+import { ANSWERED, FAULTS_SEEN, LIMITS, REFERRED } from './words';
 
 type Found = Body<'reading.taken'>['found'];
 const thou = (value: number) => ({ nm: value * NM_PER_THOU, unit: 'in' as const });
@@ -97,17 +97,24 @@ export function noteDefect(
 	});
 	const defect: Defect = { id, fault, seam, holes, heads: [] };
 	seam.defects.add(id);
-	if (random.chance(0.55)) putRight(shop, crew, defect);
-	else if (random.chance(0.75))
-		shop.laterAt(seam, random.between(1, 8), () => {
-			putRight(shop, crew, defect);
-		});
+	// Late, one is sent to who made the parts, and the others stay open.
+	if (shop.isLate ? fault === 'cracked' : random.chance(0.55)) putRight(shop, crew, defect);
+	else putOff(shop, crew, defect);
+}
+
+function putOff(shop: Shop, crew: Crew, defect: Defect): void {
+	shop.laterAt(defect.seam, shop.pen.random.between(1, 8), () => {
+		putRight(shop, crew, defect);
+	});
 }
 
 function putRight(shop: Shop, crew: Crew, defect: Defect): void {
 	const { random } = shop.pen;
 	// Somebody else wrote about these holes meanwhile: that comes first.
-	if (defect.holes.some(({ heads }) => heads.length !== 1)) return;
+	if (defect.holes.some(({ heads }) => heads.length !== 1)) {
+		putOff(shop, crew, defect);
+		return;
+	}
 	switch (defect.fault) {
 		case 'under_driven':
 		case 'proud':
@@ -119,7 +126,7 @@ function putRight(shop: Shop, crew: Crew, defect: Defect): void {
 			else replace(shop, crew, defect);
 			return;
 		case 'cracked':
-			if (shop.seldom('referred', 0.4)) refer(shop, defect);
+			if (shop.seldom('referred', 0.4)) refer(shop, crew, defect);
 			else replace(shop, crew, defect);
 			return;
 		case 'enlarged_hole':
@@ -161,8 +168,13 @@ function leave(shop: Shop, defect: Defect): void {
 }
 
 /** It stays a defect until the answer comes. */
-function refer(shop: Shop, defect: Defect): void {
+function refer(shop: Shop, crew: Crew, defect: Defect): void {
 	decide(shop, defect, 'refer', REFERRED);
+	shop.laterAt(defect.seam, shop.pen.random.between(4, 9), () => {
+		if (defect.holes.some(({ heads }) => heads.length !== 1)) return;
+		decide(shop, defect, 'replace', ANSWERED);
+		replace(shop, crew, defect);
+	});
 }
 
 function driveFurther(shop: Shop, crew: Crew, defect: Defect): void {

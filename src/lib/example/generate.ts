@@ -7,7 +7,8 @@ import type { Entry } from '$lib/logbook/entry';
 import { devicesOf, membersOf, type Device, type Member } from './crew';
 import { Evenings } from './evenings';
 import { open, startOnPaper } from './opening';
-import { localTime, Pen } from './pen';
+import { EXAMPLE_BUILD, EXAMPLE_CREW } from './ids';
+import { Pen } from './pen';
 import { readPlan } from './plan';
 import planText from './plan.csv?raw';
 import { Random } from './random';
@@ -15,6 +16,8 @@ import { Shop } from './shop';
 
 export interface GenerateOptions {
 	readonly seed?: string | number;
+	/** Id of the build; made where it is left out. */
+	readonly build?: string;
 	/** Name of the build. */
 	readonly name?: string;
 	/** Seams planned at the start: 130 is the whole example, more repeat it with numbers appended. */
@@ -28,6 +31,10 @@ export interface GenerateOptions {
 	readonly devices?: number | readonly Device[];
 	/** Day of the first line, `2025-11-15`. */
 	readonly from?: string;
+	/** Day of the last evening, instead of that of the first line. */
+	readonly until?: string;
+	/** Minutes the clocks are ahead of Greenwich, all year. */
+	readonly offset?: number;
 	/** Adds the lines the server would write about the crew. Leave out where a real server writes its own. */
 	readonly crewLines?: boolean;
 	/** Public key of a device as it stands in `device.enrolled`; without it, text that is no key. */
@@ -44,32 +51,46 @@ export interface GeneratedLog {
 	readonly batches: readonly { readonly device: string; readonly entries: readonly Entry[] }[];
 }
 
+const DAY = 86_400_000;
 const EVENINGS = 150;
 /** Entries of an ordinary evening, about: longer logs are written faster, not over more years. */
 const ENTRIES_AN_EVENING = 15;
 /** As many as a push takes. */
 const MOST_IN_BATCH = 200;
 
-/** The invented crew's year on the whole plan, about half done, with things left to settle. */
-export function exampleLog(options: Pick<GenerateOptions, 'from' | 'keyOf'> = {}): GeneratedLog {
+/**
+ * The invented crew's year on the whole plan, about half done, with things left to settle. It ends the evening before
+ * `today`, by clocks that go as those of who looks at it.
+ */
+export function exampleLog({
+	today,
+	offset
+}: {
+	readonly today: string;
+	readonly offset: number;
+}): GeneratedLog {
 	return generateLog({
-		...options,
-		seed: 'yarrow two',
+		seed: 'yarrow two 42',
+		build: EXAMPLE_BUILD,
 		name: 'Yarrow Two',
 		evenings: EVENINGS,
+		people: EXAMPLE_CREW,
 		devices: 6,
-		crewLines: true
+		crewLines: true,
+		until: new Date((dayOf(today) - 1) * DAY).toISOString().slice(0, 10),
+		offset
 	});
 }
 
-/** @throws RangeError for a `from` that is no day */
+/** @throws RangeError for a `from` or `until` that is no day */
 export function generateLog(options: GenerateOptions = {}): GeneratedLog {
-	const { seams = 130, entries, from = '2025-11-15', evenings = EVENINGS } = options;
-	const random = new Random(String(options.seed ?? 1));
+	const { seams = 130, entries, from = '2025-11-15', evenings = EVENINGS, until } = options;
+	const seed = String(options.seed ?? 1);
+	const random = new Random(seed);
 	const pace = entries === undefined ? 1 : Math.max(1, entries / (evenings * ENTRIES_AN_EVENING));
-	let day = Math.floor(Date.parse(from) / 86_400_000);
-	if (!Number.isFinite(day)) throw new RangeError(`“${from}” is not a day`);
-	const pen = new Pen(localTime(day, 14 * 60), random, pace);
+	const day =
+		until === undefined ? dayOf(from) : dayOf(until) - nthEvening(new Random(seed), evenings);
+	const pen = new Pen(random, { day, pace, offset: options.offset ?? -420, build: options.build });
 	const newId = () => pen.newId('');
 	const people = options.people ?? 4;
 	const members = typeof people === 'number' ? membersOf(people, newId) : people;
@@ -79,7 +100,8 @@ export function generateLog(options: GenerateOptions = {}): GeneratedLog {
 	if (!first || first.person !== members[0]?.id)
 		throw new RangeError('the first device is the owner’s, who is the first of the people');
 
-	const shop = new Shop(pen, members, [first, ...rest], readPlan(planText));
+	const last = entries === undefined ? evenings : Infinity;
+	const shop = new Shop(pen, members, [first, ...rest], readPlan(planText), last);
 	open(shop, options.name ?? 'Yarrow Two', options.keyOf ?? noKey, options.crewLines ?? false);
 	shop.planSeams(seams);
 	startOnPaper(shop);
@@ -88,21 +110,37 @@ export function generateLog(options: GenerateOptions = {}): GeneratedLog {
 		entries === undefined
 			? shop.evening >= evenings || shop.queue.length === 0
 			: pen.entries.length >= entries;
-	for (let inWeek: number[] = []; !enough();) {
-		// Two to four evenings a week, on any day.
-		if (inWeek.length === 0) {
-			inWeek = [1, 2, 3, 4, 5, 6, 7];
-			for (let keep = random.between(2, 4); inWeek.length > keep;)
-				inWeek.splice(random.between(0, inWeek.length - 1), 1);
-			inWeek = inWeek.map((weekday) => day + weekday);
-			day += 7;
-		}
-		const evening = inWeek.shift() as number;
-		crew.spend(evening, Math.ceil(random.between(12, 46) * pace));
+	for (const after of eveningsFrom(new Random(seed))) {
+		if (enough()) break;
+		crew.spend(day + after, Math.ceil(random.between(12, 46) * pace));
 		if (shop.queue.length === 0 && entries !== undefined) shop.planSeams(130);
 	}
 	const all = entries === undefined ? pen.entries : pen.entries.slice(0, entries);
 	return { build: pen.build, members, devices, entries: all, batches: batchesOf(all) };
+}
+
+/** In days since 1970. */
+function dayOf(text: string): number {
+	const day = Math.floor(Date.parse(text) / DAY);
+	if (!Number.isFinite(day)) throw new RangeError(`“${text}” is not a day`);
+	return day;
+}
+
+/** When the crew meets, in days after the first: two to four evenings a week, on any day. */
+function* eveningsFrom(random: Random): Generator<number, never> {
+	for (let week = 0; ; week += 7) {
+		const inWeek = [1, 2, 3, 4, 5, 6, 7];
+		for (let keep = random.between(2, 4); inWeek.length > keep;)
+			inWeek.splice(random.between(0, inWeek.length - 1), 1);
+		for (const weekday of inWeek) yield week + weekday;
+	}
+}
+
+function nthEvening(random: Random, nth: number): number {
+	const evenings = eveningsFrom(random);
+	let day = 0;
+	for (let i = 0; i < nth; i++) day = evenings.next().value;
+	return day;
 }
 
 /** Text of the right form that is no key: nothing can be sealed with it. */

@@ -9,10 +9,6 @@ import { rangesOf } from '$lib/logbook/fold/seam';
 import type { Device } from './crew';
 import type { Random } from './random';
 
-/** Where the example is built the clocks are seven hours behind Greenwich, all year. */
-const OFFSET_MINUTES = -420;
-const OFFSET = '-07:00';
-
 export interface Hole {
 	readonly by?: string;
 	readonly index: number;
@@ -41,30 +37,41 @@ export interface Apart {
 	readonly heads: ReadonlyMap<Hole, readonly string[]>;
 }
 
+interface PenOptions {
+	/** Of the first line, which opens the build; in days since 1970. */
+	readonly day: number;
+	/** Minutes the clocks of the example are ahead of Greenwich, all year. */
+	readonly offset: number;
+	/** How many times faster than people this crew is: so that long logs do not need many years. */
+	readonly pace: number;
+	readonly build?: string | undefined;
+}
+
 export class Pen {
 	readonly entries: Entry[] = [];
 	/** Milliseconds since 1970. */
 	clock: number;
 	#n = 0;
+	readonly #offset: number;
+	readonly #pace: number;
 	readonly #ids = new Map<string, () => string>();
 	readonly #bySeam = new Map<string, Entry[]>();
 
 	readonly build: string;
 
-	/** @param start milliseconds since 1970 of the first line, which opens the build */
 	constructor(
-		start: number,
 		readonly random: Random,
-		/** How many times faster than people this crew is: so that long logs do not need many years. */
-		readonly pace: number
+		{ day, offset, pace, build }: PenOptions
 	) {
-		this.clock = start;
-		this.build = this.newId('');
+		this.#offset = offset;
+		this.#pace = pace;
+		this.clock = this.localTime(day, 14 * 60);
+		this.build = build ?? this.newId('');
 	}
 
 	/** Lets time pass: so many seconds, both ends included. */
 	wait(least: number, most: number): void {
-		this.clock += Math.ceil((this.random.between(least, most) * 1000) / this.pace);
+		this.clock += Math.ceil((this.random.between(least, most) * 1000) / this.#pace);
 	}
 
 	/** An id as this device would make it now. */
@@ -105,7 +112,7 @@ export class Pen {
 			n,
 			device: by.id,
 			author: by.person,
-			at: wallTime(this.clock),
+			at: this.wallTime(),
 			...(about.when && { when: about.when }),
 			body
 		};
@@ -163,14 +170,17 @@ export class Pen {
 	apart(holes: readonly Hole[]): Apart {
 		return { n: this.#n, heads: new Map(holes.map((hole) => [hole, hole.heads])) };
 	}
-}
 
-/** Wall time with offset, where the example is built. */
-export function wallTime(ms: number): string {
-	return new Date(ms + OFFSET_MINUTES * 60_000).toISOString().slice(0, 23) + OFFSET;
-}
+	/** Wall time with offset, where the example is built. */
+	wallTime(ms = this.clock): string {
+		const local = new Date(ms + this.#offset * 60_000).toISOString().slice(0, 23);
+		const size = Math.abs(this.#offset);
+		const two = (value: number) => String(value).padStart(2, '0');
+		return `${local}${this.#offset < 0 ? '-' : '+'}${two(Math.trunc(size / 60))}:${two(size % 60)}`;
+	}
 
-/** Milliseconds since 1970 at a minute of a local day. @param day days since 1970 */
-export function localTime(day: number, minute: number): number {
-	return (day * 1440 + minute - OFFSET_MINUTES) * 60_000;
+	/** Milliseconds since 1970 at a minute of a local day. @param day days since 1970 */
+	localTime(day: number, minute: number): number {
+		return (day * 1440 + minute - this.#offset) * 60_000;
+	}
 }

@@ -34,7 +34,19 @@ describe('the plan of the example', () => {
 			'Left elevator',
 			'Right elevator'
 		]);
-		expect(plan.every(({ outline }) => outline.length > 0)).toBe(true);
+		expect([...new Set(plan.map(({ outline }) => outline))]).toEqual([
+			'stabilizer',
+			'elevator',
+			'fin',
+			'rudder',
+			'spar',
+			'wing',
+			'tank',
+			'flap',
+			'fuselage',
+			'floor',
+			'tail_cone'
+		]);
 	});
 
 	it('reads the columns', () => {

@@ -24,7 +24,7 @@ interface PlannedStep {
 
 export interface PlannedAssembly {
 	readonly name: string;
-	/** Name of the outline drawn on the wall. */
+	/** Which part it is: the name of the outline drawn on the wall. */
 	readonly outline: string;
 	readonly drawing: string;
 	/** What has to be done beside rivets before it is closed. */
@@ -70,7 +70,7 @@ function seamOf(cells: readonly string[], assembly: PlannedAssembly): PlannedSea
 	const count = wholeNumber(holes);
 	const stack = sheets.split(' + ').map(sheetOf);
 	const rowCount = wholeNumber(rows);
-	const [endOne, endLast] = endsOf(assembly.outline, name);
+	const [endOne, endLast] = endsOf(assembly.name, name);
 	const says = (what: RegExp) => what.test(note);
 	return {
 		name,
@@ -164,35 +164,39 @@ function overridesOf(
 	return overrides;
 }
 
-/** Invented: the shape on the wall by the assembly's name, and which end hole 1 is at. */
-const OUTLINES: readonly (readonly [RegExp, string, readonly [string, string]])[] = [
+/** Invented: which part an assembly is, by its name, and which end hole 1 is at. */
+const PARTS: readonly (readonly [RegExp, string, readonly [string, string]])[] = [
 	[/stabilizer/i, 'stabilizer', ['left tip', 'right tip']],
 	[/elevator/i, 'elevator', ['inboard', 'outboard']],
 	[/^fin$/i, 'fin', ['bottom', 'top']],
 	[/rudder/i, 'rudder', ['bottom', 'top']],
-	[/wing spar/i, 'wing-spar', ['inboard', 'outboard']],
-	[/wing box/i, 'wing-box', ['inboard', 'outboard']],
-	[/fuel bay/i, 'fuel-bay', ['inboard', 'outboard']],
-	[/flap|aileron/i, 'control-surface', ['inboard', 'outboard']],
-	[/forward fuselage/i, 'forward-fuselage', ['forward', 'aft']],
-	[/center section/i, 'center-section', ['left', 'right']],
-	[/tail cone/i, 'tail-cone', ['forward', 'aft']]
+	[/wing spar/i, 'spar', ['inboard', 'outboard']],
+	[/wing box/i, 'wing', ['inboard', 'outboard']],
+	[/fuel bay/i, 'tank', ['inboard', 'outboard']],
+	[/flap|aileron/i, 'flap', ['inboard', 'outboard']],
+	[/center section/i, 'floor', ['left', 'right']],
+	[/forward fuselage/i, 'fuselage', ['forward', 'aft']],
+	[/tail cone/i, 'tail_cone', ['forward', 'aft']]
 ];
 
+function partOf(assembly: string): (typeof PARTS)[number] | undefined {
+	return PARTS.find(([pattern]) => pattern.test(assembly));
+}
+
 function assemblyOf(name: string, place: number): PlannedAssembly & { seams: PlannedSeam[] } {
-	const outline = OUTLINES.find(([pattern]) => pattern.test(name))?.[1];
+	const outline = partOf(name)?.[1];
 	if (outline === undefined) throw new Error(`no outline for “${name}”`);
 	return { name, outline, drawing: `YT-${String(place).padStart(2, '0')}`, steps: [], seams: [] };
 }
 
-function endsOf(outline: string, seam: string): readonly [string, string] {
+function endsOf(assembly: string, seam: string): readonly [string, string] {
 	if (/firewall/i.test(seam)) return ['left', 'right'];
-	return OUTLINES.find(([, name]) => name === outline)?.[2] ?? ['first', 'last'];
+	return partOf(assembly)?.[2] ?? ['first', 'last'];
 }
 
 function stepsOf({ outline, seams }: PlannedAssembly): PlannedAssembly['steps'] {
 	const steps: PlannedStep[] = [];
-	if (outline === 'fuel-bay')
+	if (outline === 'tank')
 		steps.push({
 			text: 'Leak test: pressure held for 24 hours, by the drawing',
 			value: 'number',

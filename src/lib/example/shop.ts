@@ -41,6 +41,9 @@ export interface Crew {
 	readonly bucker: string | undefined;
 }
 
+/** So many evenings before the end. */
+const LATE = 6;
+
 export class Shop {
 	/** Seams that are not finished, in the order they are worked on. */
 	readonly queue: Seam[] = [];
@@ -61,7 +64,9 @@ export class Shop {
 		readonly pen: Pen,
 		readonly members: readonly Member[],
 		readonly devices: readonly [Device, ...Device[]],
-		readonly plan: readonly PlannedAssembly[]
+		readonly plan: readonly PlannedAssembly[],
+		/** Number of the last evening; Infinity where the lines decide. */
+		readonly lastEvening: number
 	) {}
 
 	get owner(): Device {
@@ -75,16 +80,22 @@ export class Shop {
 		);
 	}
 
-	/** Once for certain, as soon as it can be, and then in a share of cases. */
+	/** The last evenings, where it is known which is the last: what comes up now is left to be settled. */
+	get isLate(): boolean {
+		return this.evening > this.lastEvening - LATE;
+	}
+
+	/** Once for certain, as soon as it can be, and once more late; otherwise in a share of cases. */
 	seldom(what: string, share: number): boolean {
-		if (this.#happened.has(what)) return this.pen.random.chance(share);
-		this.#happened.add(what);
+		const once = this.isLate ? `${what}, late` : what;
+		if (this.#happened.has(once)) return this.pen.random.chance(share);
+		this.#happened.add(once);
 		return true;
 	}
 
 	/** Puts something off by so many evenings. What is due after the last evening stays undone, as in any shop. */
 	later(evenings: number, task: () => void): void {
-		const due = this.evening + Math.max(1, evenings);
+		const due = this.evening + Math.max(1, evenings) + (this.isLate ? LATE : 0);
 		const list = this.#tasks.get(due);
 		if (list) list.push(task);
 		else this.#tasks.set(due, [task]);

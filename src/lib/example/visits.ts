@@ -6,6 +6,9 @@ import { digestOf, materialOf } from '$lib/logbook/signoff';
 import { read } from './faults';
 import { isClean, type Assembly, type Seam, type Shop } from './shop';
 
+/** Evenings from one visit to the next. */
+export const BETWEEN_VISITS = 12;
+
 /** Asks for a look at a finished seam. */
 export function ask(shop: Shop, seam: Seam): void {
 	if (shop.devicesIn('inspector').length === 0) return;
@@ -20,6 +23,7 @@ export function visit(shop: Shop): void {
 	const [device] = shop.devicesIn('inspector');
 	const inspector = shop.members.find(({ id }) => id === device?.person);
 	if (!device || !inspector) return;
+	const last = shop.evening + BETWEEN_VISITS > shop.lastEvening;
 	for (const { seam, line } of shop.asked.splice(0)) {
 		pen.wait(300, 900);
 		const rivets = seam.holes.filter(({ heads }) => heads.length === 1);
@@ -52,17 +56,21 @@ export function visit(shop: Shop): void {
 				statement:
 					'I looked at every head of this seam and gauged those recorded. Not an airworthiness approval.'
 			},
-			{ seam: seam.id, on: [line] }
+			{ seam: seam.id, on: [line, ...(seam.signed === undefined ? [] : [seam.signed])] }
 		);
-		if (shop.seldom('stale', 0.1)) findLater(shop, seam);
+		if (last ? shop.seldom('stale at last', 0) : shop.seldom('stale', 0.1)) findLater(shop, seam);
 	}
 }
 
-/** One more reading of the seam turns up after it was signed: the sign-off no longer covers all there is. */
+/**
+ * One more reading of the seam turns up after it was signed: the sign-off no longer covers all there is, and is asked for
+ * again.
+ */
 function findLater(shop: Shop, seam: Seam): void {
 	shop.laterAt(seam, 2, () => {
 		const [hole] = seam.holes;
 		if (hole) read(shop, shop.owner, seam, hole, shop.owner.person);
+		ask(shop, seam);
 	});
 }
 

@@ -79,4 +79,5 @@ export const CHANGES: Some<string> = [
 	'Drive every third first, then fill in'
 ];
 
+export const ANSWERED = 'The answer came: drill it out, look at the hole, drive another';
 export const REFERRED = 'Picture sent to the kit maker, waiting for an answer';
