@@ -13,7 +13,7 @@ test('the front page works, and the headers stand on every kind of answer', asyn
 		if (message.type() === 'error') failures.push(message.text());
 	});
 	await page.goto(`${server.url}/`);
-	await expect(page.getByRole('heading', { name: 'Tallybar' })).toBeVisible();
+	await expect(page.getByRole('heading', { name: /^Every rivet/ })).toBeVisible();
 	await page.getByRole('link', { name: 'My builds' }).click();
 	await expect(page.getByRole('heading', { name: 'Nobody is signed in here' })).toBeVisible();
 	expect(failures).toEqual([]);
