@@ -52,7 +52,7 @@ module.exports = {
 		{
 			name: 'device-knows-no-server',
 			severity: 'error',
-			from: { path: '^src/lib/device/' },
+			from: { path: '^src/lib/device/', pathNot: '\\.test\\.ts$' },
 			to: { path: '^(src/lib/(server|components|example)/|src/routes/|src/bin/|migrations/)' }
 		},
 		{

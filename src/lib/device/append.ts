@@ -42,7 +42,7 @@ const MOST_N = 2 ** 52;
 const STORES: StoreName[] = ['builds', 'entries', 'outbox', 'summaries'];
 
 /**
- * Adds lines to the log of a build and puts them in line for the server, all or none. When it returns they are on the
+ * Adds lines to the log of a build and puts them in line for the server (but for a store that stays), all or none. When it returns they are on the
  * device's disk (one transaction of durability strict, committed). Their numbers follow each other from the highest
  * known that is no leap; the first lines of this device in a build are preceded by its `device.enrolled`. A `build.opened` as first
  * draft opens the build of its id.
@@ -79,7 +79,7 @@ export async function appendEntries(
 	}
 	store.cache.set(build, written.changes - 1, written.changes, written.lines);
 	store.notices.send({ build, parts: written.parts, appended: true });
-	void store.askToPersist();
+	if (!store.stays) void store.askToPersist();
 	return written.entries;
 }
 
@@ -131,16 +131,17 @@ async function appendOnce(
 			const { entry } = reading;
 			const part = partOf(entry);
 			quiet(entries.add(placeless(reading)));
-			quiet(
-				outbox.add({
-					build,
-					n: entry.n,
-					id: entry.id,
-					state: 'waiting',
-					tries: 0,
-					at: store.env.now()
-				})
-			);
+			if (!store.stays)
+				quiet(
+					outbox.add({
+						build,
+						n: entry.n,
+						id: entry.id,
+						state: 'waiting',
+						tries: 0,
+						at: store.env.now()
+					})
+				);
 			const lines = added.get(part);
 			const line = lineOf(reading) as Line;
 			if (lines) lines.push(line);
@@ -256,7 +257,7 @@ function written(
 }
 
 /** The row of a sound line that has no place in the server's history yet. */
-function placeless({ entry, text, hash }: Sound): EntryRow {
+export function placeless({ entry, text, hash }: Omit<Sound, 'ok'>): EntryRow {
 	return {
 		build: entry.build,
 		id: entry.id,

@@ -137,7 +137,9 @@ export class SyncLoop {
 	#statusCost = 0;
 	#waitingForRound: (() => void)[] = [];
 
+	/** @throws Error for a store that stays: nothing of it may reach a server, whoever asks */
 	constructor(store: DeviceStore, transport: Transport, env: Partial<LoopEnv> = {}) {
+		if (store.stays) throw new Error('this store is never synced');
 		this.#store = store;
 		this.#transport = transport;
 		this.#env = { ...OF_THE_PAGE, ...env };

@@ -35,7 +35,9 @@ export class DeviceStore {
 		readonly env: DeviceEnv,
 		readonly handle: Handle<Schema>,
 		readonly notices: Notices,
-		keys: OwnKeys
+		keys: OwnKeys,
+		/** Nothing of it is ever put in line for a server, and the browser is not asked to keep it. */
+		readonly stays = false
 	) {
 		this.newId = idMaker(env.now, env.chance);
 		this.#keys = keys;
@@ -131,16 +133,45 @@ export class DeviceStore {
  *   what is logged there would be gone with the tab), `device.full` when there is no room
  */
 export async function openStore(person: string, options: StoreOptions = {}): Promise<DeviceStore> {
-	const { prefix = '', name, deviceName } = options;
-	const env: DeviceEnv = { ...DEVICE, ...options.env };
-	const database = storeName(person, prefix);
+	const { prefix = '', name } = options;
+	const store = await openNamed(storeName(person, prefix), person, options, false);
+	try {
+		const { env } = store;
+		await rememberPerson({ person, ...(name !== undefined && { name }) }, { prefix, env });
+		return store;
+	} catch (error) {
+		store.close();
+		throw error;
+	}
+}
+
+/**
+ * Opens a store that stays: of no account, in no list of who is here, and never the one that is signed in.
+ * @param name of the store among those that stay
+ * @param person as whom lines are written in it
+ */
+export function openStayingStore(
+	name: string,
+	person: string,
+	options: StoreOptions = {}
+): Promise<DeviceStore> {
+	// Ids of persons have no space, so no account's store is called this.
+	return openNamed(storeName(`stays ${name}`, options.prefix ?? ''), person, options, true);
+}
+
+async function openNamed(
+	database: string,
+	person: string,
+	{ prefix = '', deviceName, env: given }: StoreOptions,
+	stays: boolean
+): Promise<DeviceStore> {
+	const env: DeviceEnv = { ...DEVICE, ...given };
 	const handle = new Handle<Schema>(database, SCHEMA_VERSION, upgrade);
 	try {
 		const keys = await handle.run((db) => ownKeys(db, idMaker(env.now, env.chance)));
 		const notices = new Notices(database);
-		const store = new DeviceStore(person, prefix, deviceName, env, handle, notices, keys);
+		const store = new DeviceStore(person, prefix, deviceName, env, handle, notices, keys, stays);
 		await store.recallPersistence();
-		await rememberPerson({ person, ...(name !== undefined && { name }) }, { prefix, env });
 		return store;
 	} catch (error) {
 		handle.dispose();

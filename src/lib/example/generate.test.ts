@@ -148,7 +148,7 @@ describe('the example', () => {
 		const left = folded.flatMap(({ holes, lines }) =>
 			holes
 				.filter(({ state }) => state === 'left_open')
-				.map(({ heads }) => lines.find(({ id }) => id === heads[0]).entry)
+				.map(({ heads }) => lines.find(({ id }) => id === heads[0])?.entry)
 		);
 		expect(left.length).toBeGreaterThan(8);
 		const reasons = left.map((entry) => entry?.kind === 'holes.left_open' && entry.body.reason);
