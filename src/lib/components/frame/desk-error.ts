@@ -39,9 +39,10 @@ export function deskErrorText(
 			again: true
 		};
 	if (status >= 500) return { title, happened: says, then: [SAFE], build, again: true };
-	const unknown =
+	// What the server says of a build it does not know says what is safe already.
+	const then =
 		status === 404 && build !== undefined
 			? ['A build that was opened without a network is known there once its lines have gone out.']
-			: [];
-	return { title, happened: says, then: [...unknown, SAFE], build, again: false };
+			: [SAFE];
+	return { title, happened: says, then, build, again: false };
 }
