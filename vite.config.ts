@@ -4,12 +4,24 @@ import { SvelteKitPWA } from '@vite-pwa/sveltekit';
 import type { Rolldown } from 'vite';
 import { defineConfig } from 'vitest/config';
 
-/** SvelteKit's entries, the root layout and the root error page. */
-const EVERY_PAGE = /\/(runtime\/client\/entry|client-optimized\/(app|nodes\/[01]))\.js$/;
-const SHOP_LAYOUT = /\/src\/routes\/\(shop\)\/\+layout\.(svelte|ts)$/;
+/**
+ * What is loaded together is one file: gzip starts anew with each, and forty small ones cost a tenth of what they hold.
+ * A chunk is all that its roots import at once, directly or not, and no chunk above it has; the rest is as pages share it.
+ *
+ * SvelteKit's list of nodes stays out of them all: it imports every page in time, and where it lies SvelteKit counts
+ * every page's files as not needed by the others.
+ */
+const CHUNKS: readonly (readonly [name: string, roots: RegExp])[] = [
+	['app', /\/(runtime\/client\/entry|client-optimized\/nodes\/[01])\.js$/],
+	['shop', /\/routes\/\(shop\)\/\+layout\.(svelte|ts)$/],
+	[
+		'build',
+		/\/components\/(frame\/Problem\.svelte|logbook\/(WithBuild\.svelte|(fitting|names|opened|people)\.ts))$/
+	],
+	['bench', /\/components\/bench\/SeamBench\.svelte$/]
+];
 
-/** One chunk of everything that a module of `roots` imports at once, directly or not. */
-function below(debugName: string, roots: RegExp): Rolldown.CodeSplittingGroup {
+function chunk([debugName, roots]: (typeof CHUNKS)[number]): Rolldown.CodeSplittingGroup {
 	return {
 		debugName,
 		name: (id, context) => {
@@ -76,10 +88,10 @@ export default defineConfig({
 		client: {
 			build: {
 				rolldownOptions: {
+					// Making a schema does nothing else: those that only the server uses are left out.
+					treeshake: { manualPureFunctions: ['z'] },
 					output: {
-						// gzip starts anew with each file, and forty small ones cost a tenth of what they hold. These two
-						// every page, and every page of the shop, loads whole in any case; the rest is as pages share it.
-						codeSplitting: { groups: [below('app', EVERY_PAGE), below('shop', SHOP_LAYOUT)] }
+						codeSplitting: { groups: CHUNKS.map(chunk) }
 					}
 				}
 			}
