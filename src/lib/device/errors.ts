@@ -1,13 +1,13 @@
-import { sentence, type RefusalCode } from '$lib/logbook/refusals';
+import { ownSentence, type OwnRefusalCode } from '$lib/logbook/own-refusals';
 
 /** Something the device could not do. `code` is for programs, the message for people. */
 export class DeviceError extends Error {
 	override name = 'DeviceError';
 	constructor(
-		readonly code: RefusalCode,
+		readonly code: OwnRefusalCode,
 		options?: ErrorOptions & { detail?: string | undefined }
 	) {
-		super(sentence(code), options);
+		super(ownSentence(code), options);
 		this.detail = options?.detail;
 	}
 	readonly detail: string | undefined;

@@ -5,7 +5,7 @@
 import * as z from 'zod/mini';
 import { canonicalText, hashText, NotCanonical, tidy, utf8, type Json } from './bytes';
 import { traits, type Body, type Kind } from './kinds';
-import type { RefusalCode } from './refusals';
+import type { OwnRefusalCode } from './own-refusals';
 import { Id, WallTime, When, whole } from './scalars';
 
 /** `on` may not name more lines than this: a run over the longest seam stands on fewer. */
@@ -61,7 +61,7 @@ export type Reading =
 	/** `id` where it could be made out, so that the answer can name it. */
 	| {
 			readonly ok: false;
-			readonly code: RefusalCode;
+			readonly code: OwnRefusalCode;
 			readonly envelope?: undefined;
 			readonly id?: string | undefined;
 			readonly detail?: string;

@@ -2,7 +2,7 @@
 import { appendEntries, type Draft } from '$lib/device/append';
 import { DeviceError } from '$lib/device/errors';
 import type { DeviceStore } from '$lib/device/store';
-import { sentence } from '$lib/logbook/refusals';
+import { ownSentence } from '$lib/logbook/own-refusals';
 
 /** Adds the lines; answers why nothing was saved, or undefined when they are on the device's disk. */
 export async function write(
@@ -14,6 +14,6 @@ export async function write(
 		await appendEntries(store, build, lines);
 		return undefined;
 	} catch (error) {
-		return error instanceof DeviceError ? error.message : sentence('device.store_lost');
+		return error instanceof DeviceError ? error.message : ownSentence('device.store_lost');
 	}
 }
