@@ -3,7 +3,7 @@ import { holesOf, type Entry } from '$lib/logbook/entry';
 import type { Build } from '$lib/logbook/fold/build';
 import { holeKey, type Seam } from '$lib/logbook/fold/seam';
 import { counted } from '../frame/numbers';
-import { numbersText } from './words';
+import { numbersText } from './rivet-words';
 
 /** What ids are called. Each answers with something to read also for an id it does not know. */
 export interface Names {

@@ -2,7 +2,7 @@
 import type { Hole, HoleKey, Seam } from '$lib/logbook/fold/seam';
 import { isKind } from '$lib/logbook/fold/line';
 import { counted } from '../frame/numbers';
-import { FAULT_WORDS } from '../logbook/words';
+import { FAULT_WORDS } from '../logbook/rivet-words';
 
 export type Ring = 'plain' | 'replaced' | 'oversize';
 
