@@ -1,11 +1,11 @@
 /** The session as screens see it: who logs here, their store, and its sync. Works before and without any network. */
 import { DeviceError } from './errors';
-import { SyncLoop } from './loop';
 import { lastPerson } from './registry';
 import { askSession } from './session';
 import { closeStore, deleteStore, unsent, type Unsent } from './sign-out';
 import { openStore, type DeviceStore, type StoreOptions } from './store';
-import { httpTransport, type Transport } from './transport';
+import { Sync } from './sync';
+import type { Transport } from './transport';
 
 /**
  * loading: nothing is known yet. signed_in: the server says so. offline: it could not be asked; whoever was signed in
@@ -24,7 +24,7 @@ export class Session {
 	#standing = $state<Standing>('loading');
 	#person = $state.raw<{ readonly id: string; readonly name: string }>();
 	#store = $state.raw<DeviceStore>();
-	#loop = $state.raw<SyncLoop>();
+	#loop = $state.raw<Sync>();
 	#problem = $state.raw<DeviceError>();
 	/** One thing after the other: two who open a store at a time would leave a second loop running. */
 	#turn: Promise<unknown> = Promise.resolve();
@@ -43,7 +43,7 @@ export class Session {
 	get store(): DeviceStore | undefined {
 		return this.#store;
 	}
-	get loop(): SyncLoop | undefined {
+	get loop(): Sync | undefined {
 		return this.#loop;
 	}
 	/** Why there is no store, to be said aloud: nothing can be logged then. */
@@ -146,7 +146,7 @@ export class Session {
 
 	async #become(id: string, name: string): Promise<void> {
 		this.stop();
-		const { transport = httpTransport, prefix, deviceName, env } = this.#options;
+		const { transport, prefix, deviceName, env } = this.#options;
 		const options: StoreOptions = {
 			...(prefix !== undefined && { prefix }),
 			...(deviceName !== undefined && { deviceName }),
@@ -156,7 +156,7 @@ export class Session {
 		const store = await openStore(id, { ...options, ...(name !== '' && { name }) });
 		this.#problem = undefined;
 		this.#store = store;
-		const loop = new SyncLoop(store, transport(id));
+		const loop = new Sync(store, transport);
 		this.#loop = loop;
 		loop.subscribe(({ phase, lastSuccess }) => {
 			if (this.#loop !== loop) return;

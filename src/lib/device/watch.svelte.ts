@@ -10,7 +10,7 @@ import type { Seam } from '$lib/logbook/fold/seam';
 import { totalsOf, type SeamSummary, type Totals } from '$lib/logbook/fold/summary';
 import type { CrewMember } from '$lib/logbook/wire';
 import { appendEntries, type Draft } from './append';
-import type { Status, SyncLoop } from './loop';
+import type { Status } from './loop';
 import {
 	buildHere,
 	builds,
@@ -22,6 +22,7 @@ import {
 } from './read';
 import type { Notice } from './notices';
 import type { DeviceStore } from './store';
+import type { Sync } from './sync';
 
 /** Reads while it is wanted, once at a time; a change during a reading leads to one more. */
 class Follower {
@@ -234,11 +235,11 @@ export class SeamLog {
 
 /** How sync stands, live. */
 export class SyncStatus {
-	readonly #loop: SyncLoop;
+	readonly #loop: Sync;
 	readonly #follow: () => void;
 	#status = $state.raw<Status>() as Status;
 
-	constructor(loop: SyncLoop) {
+	constructor(loop: Sync) {
 		this.#loop = loop;
 		this.#status = loop.status;
 		this.#follow = createSubscriber(() => {
