@@ -77,6 +77,8 @@ export class World {
 	lost = 0;
 	/** Lines on which the server fails whole, until healed. */
 	readonly poison = new Set<string>();
+	/** Enrolments whose author was handed a file with them. */
+	readonly #handed = new Set<string>();
 	#tick = 0;
 	#prefix = `world ${++worlds}: `;
 
@@ -347,18 +349,38 @@ export class World {
 		}
 		let before = '';
 		let quiet = false;
-		for (let round = 0; round < 14; round++) {
+		for (let round = 0; round < 20; round++) {
 			this.passTime();
 			for (const phone of this.phones) await this.sync(phone);
 			for (const person of this.people) await this.admit(person);
 			await this.acceptQuarantine(quiet);
 			const now = await this.#state();
-			if (now === before && quiet) return;
+			if (now === before && quiet && !(await this.#handHome())) return;
 			// Once nothing moves by itself, the owner also looks at what has long been held.
 			quiet ||= now === before;
 			before = now;
 		}
-		throw new Error(`still moving after fourteen rounds: ${before}`);
+		throw new Error(`still moving after twenty rounds: ${before}`);
+	}
+
+	/**
+	 * An enrolment comes in with the session of its author and no other. Whoever carries one whose phone is lost hands
+	 * its author a file, on a new phone if need be.
+	 * @returns whether anybody was handed one
+	 */
+	async #handHome(): Promise<boolean> {
+		let handed = false;
+		for (const phone of [...this.phones])
+			for (const { id, code } of await this.outbox(phone)) {
+				const entry = await phone.store.handle.run((db) => db.get('entries', [this.build, id]));
+				const author = this.people.find((person) => person.id === entry?.author);
+				if (code !== 'device.carried' || !author || this.#handed.has(id)) continue;
+				this.#handed.add(id);
+				const own = this.phones.find(({ person }) => person === author);
+				await this.handOver(phone, own ?? (await this.addPhone(author)));
+				handed = true;
+			}
+		return handed;
 	}
 
 	async #state(): Promise<string> {
