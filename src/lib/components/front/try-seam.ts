@@ -6,7 +6,7 @@ type Touch = 'open' | 'driven' | 'tipped' | 'drilled_out' | 'replaced';
 /** Holes in their order; the place in the list is the number less one. */
 export type TrySeam = readonly Touch[];
 
-export const RUN = 5;
+const RUN = 5;
 
 /** What one tap makes of a hole: driven, found tipped, drilled out, replaced, and that one may be tipped as well. */
 const AFTER: Readonly<Record<Touch, Touch>> = {
