@@ -124,6 +124,8 @@ export interface LoggedLine {
 	/** Its number in the server's log, once this device has seen it there. */
 	readonly seq?: number;
 	readonly received?: number;
+	/** It is never sent: it lies in a store that stays. */
+	readonly stays?: true;
 	/** Not counted: refused, pending or discarded. */
 	readonly excluded: boolean;
 	readonly finding?: LineFinding;
@@ -164,11 +166,16 @@ export async function newestLines(
 			)
 		);
 		await tx.done;
-		return rows.map((row, i) => logged(row, history, outbox[i]));
+		return rows.map((row, i) => logged(store, row, history, outbox[i]));
 	});
 }
 
-function logged(row: EntryRow, history: number, outbox: OutboxRow | undefined): LoggedLine {
+function logged(
+	{ stays }: DeviceStore,
+	row: EntryRow,
+	history: number,
+	outbox: OutboxRow | undefined
+): LoggedLine {
 	const { id, text, hash, seq, received, finding, conflict } = row;
 	return {
 		id,
@@ -177,6 +184,7 @@ function logged(row: EntryRow, history: number, outbox: OutboxRow | undefined): 
 		hash,
 		...(row.history === history && seq !== undefined && { seq }),
 		...(row.history === history && received !== undefined && { received }),
+		...(stays && { stays }),
 		excluded: row.excluded === 1,
 		...(finding && { finding }),
 		...(outbox && { outbox }),
@@ -200,7 +208,7 @@ export async function oneLine(
 			row.seal === undefined ? undefined : await tx.objectStore('seals').get([build, row.seal]);
 		await tx.done;
 		return {
-			...logged(row, history, outbox),
+			...logged(store, row, history, outbox),
 			...(seal && {
 				seal: { device: seal.device, hashes: seal.hashes, signature: seal.signature }
 			})
@@ -215,7 +223,9 @@ export async function linesWithFindings(store: DeviceStore, build: string): Prom
 		const history = (await tx.objectStore('builds').get(build))?.history ?? 0;
 		const rows = await tx.objectStore('entries').getAll(within(build));
 		await tx.done;
-		return rows.filter(({ finding }) => finding).map((row) => logged(row, history, undefined));
+		return rows
+			.filter(({ finding }) => finding)
+			.map((row) => logged(store, row, history, undefined));
 	});
 }
 

@@ -169,7 +169,9 @@ type Meta =
 	| { readonly is: 'device'; readonly device: string }
 	| { readonly is: 'keys'; readonly keys: OwnKeys }
 	| { readonly is: 'persisted'; readonly granted: boolean; readonly at: number }
-	| { readonly is: 'crew'; readonly crew: readonly CrewMember[] };
+	| { readonly is: 'crew'; readonly crew: readonly CrewMember[] }
+	/** Of a build that was made here in one go: its highest n then. What was written since is beyond it. */
+	| { readonly is: 'made'; readonly maxN: number };
 
 export interface Schema extends DBSchema {
 	meta: { key: string; value: Meta };

@@ -68,9 +68,16 @@ export async function ensureMade(
 
 /** How many lines were written here since the build was made. */
 export async function ownLines(store: DeviceStore, build: string): Promise<number> {
-	const rows = await store.handle.run((db) => db.getAll('entries', within(build)));
-	return rows.filter(({ device, kind }) => device === store.device && kind !== 'device.enrolled')
-		.length;
+	return store.handle.run(async (db) => {
+		const tx = db.transaction(['builds', 'entries', 'meta']);
+		const row = await tx.objectStore('builds').get(build);
+		const made = await tx.objectStore('meta').get(`made:${build}`);
+		if (!row || made?.is !== 'made') return 0;
+		const since = IDBKeyRange.bound([build, made.maxN], [build, []], true);
+		const lines = await tx.objectStore('entries').index('byN').count(since);
+		// The enrolment of this device came by itself.
+		return lines - row.enrolled.length;
+	});
 }
 
 /** Deletes the store of this build and all that is in it. */
@@ -102,6 +109,8 @@ async function fill(
 	const ofTheBuild = parts.get('') ?? [];
 	parts.delete('');
 	const seams = [...parts];
+	// The next seams are folded while the browser writes those before them.
+	let written = Promise.resolve();
 	for (let at = 0; at < seams.length; at += SEAMS_AT_ONCE) {
 		onprogress?.({ seams: at, of: seams.length });
 		const some = seams.slice(at, at + SEAMS_AT_ONCE).map(([seam, lines]) => ({
@@ -109,14 +118,18 @@ async function fill(
 			rows: rowsOf(lines),
 			summary: summarise(foldSeam(seam, lines.map(lineOf)))
 		}));
-		await inOne(store, ['entries', 'summaries'], 'relaxed', (tx) => {
+		await written;
+		written = inOne(store, ['entries', 'summaries'], 'relaxed', (tx) => {
 			for (const { seam, rows, summary } of some) {
 				for (const row of rows) quiet(tx.objectStore('entries').put(row));
 				const { fold } = summary;
 				quiet(tx.objectStore('summaries').put({ build, seam, fold, summary }));
 			}
 		});
+		// A turn for the page, to say how far it is, and for the transaction, to ask for all of it.
+		await new Promise((turn) => setTimeout(turn, 0));
 	}
+	await written;
 	onprogress?.({ seams: seams.length, of: seams.length });
 	const rows = rowsOf(ofTheBuild);
 	await store.handle.run(async (db) => {
@@ -126,12 +139,14 @@ async function fill(
 			// A tab without Web Locks may have cleared them meanwhile.
 			const there = await tx.objectStore('entries').count(within(build));
 			if (there !== entries.length) throw new DeviceError('device.store_lost');
+			const maxN = entries.reduce((most, { n }) => Math.max(most, n), 0);
+			quiet(tx.objectStore('meta').put({ is: 'made', maxN }, `made:${build}`));
 			quiet(tx.objectStore('meta').put({ is: 'crew', crew }, `crew:${build}`));
 			quiet(
 				tx.objectStore('builds').put({
 					...newBuildRow(build, name),
 					role: crew.find(({ person }) => person === store.person)?.role ?? null,
-					maxN: entries.reduce((most, { n }) => Math.max(most, n), 0),
+					maxN,
 					lines: entries.length,
 					// Never a number at which another tab keeps lines of the one made before.
 					changes: store.env.now()

@@ -25,6 +25,16 @@ const NOTHING_KNOWN: Status = {
 	builds: []
 };
 
+/** What says how sync stands: {@link Sync}, or what stands in its place. */
+export type SyncSource = Pick<Sync, 'status' | 'subscribe' | 'tryNow'>;
+
+/** Of a store that stays: nothing is ever synced. */
+export const NO_SYNC: SyncSource = {
+	status: NOTHING_KNOWN,
+	subscribe: () => () => undefined,
+	tryNow: () => Promise.resolve()
+};
+
 const RETRY = 5000;
 
 export class Sync {

@@ -22,7 +22,7 @@ import {
 } from './read';
 import type { Notice } from './notices';
 import type { DeviceStore } from './store';
-import type { Sync } from './sync';
+import type { SyncSource } from './sync';
 
 /** Reads while it is wanted, once at a time; a change during a reading leads to one more. */
 class Follower {
@@ -235,11 +235,11 @@ export class SeamLog {
 
 /** How sync stands, live. */
 export class SyncStatus {
-	readonly #loop: Sync;
+	readonly #loop: SyncSource;
 	readonly #follow: () => void;
 	#status = $state.raw<Status>() as Status;
 
-	constructor(loop: Sync) {
+	constructor(loop: SyncSource) {
 		this.#loop = loop;
 		this.#status = loop.status;
 		this.#follow = createSubscriber(() => {

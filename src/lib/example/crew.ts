@@ -14,6 +14,15 @@ export interface Device {
 	readonly name: string;
 }
 
+/** Of the example, the same on every device: its store is opened as the owner before there is a log. */
+export const EXAMPLE_OWNER = '0193e7a1-0000-7000-8000-00000000a001';
+export const EXAMPLE_CREW: readonly Member[] = [
+	{ id: EXAMPLE_OWNER, name: 'Ana Verhoek', role: 'owner' },
+	{ id: '0193e7a1-0000-7000-8000-00000000a002', name: 'Jo Tamsin', role: 'builder' },
+	{ id: '0193e7a1-0000-7000-8000-00000000a003', name: 'Piet Aldergrove', role: 'inspector' },
+	{ id: '0193e7a1-0000-7000-8000-00000000a004', name: 'Sam Verhoek', role: 'follower' }
+];
+
 const NAMES = [
 	'Ana Verhoek',
 	'Jo Tamsin',

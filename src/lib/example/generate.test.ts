@@ -8,8 +8,9 @@ import { eveningOf, summarise, totalsOf, type SeamSummary } from '$lib/logbook/f
 import { judge, type Log } from '$lib/logbook/judge';
 import { traits } from '$lib/logbook/kinds';
 import { digestOf, materialOf } from '$lib/logbook/signoff';
+import { EXAMPLE_OWNER } from './crew';
 import { exampleLog, generateLog, type GeneratedLog } from './generate';
-import { EXAMPLE_BUILD, EXAMPLE_OWNER } from './ids';
+import { EXAMPLE_BUILD } from './ids';
 
 /** Changes with the generator, the plan and the way ids are made; never from one run to the next. */
 const SAME = 'Q25ztVBpmdisONepn5gNrjlyet-_18rRL9I0BsX2FWA';

@@ -4,10 +4,10 @@
  */
 import { base64url, hashBytes, utf8 } from '$lib/logbook/bytes';
 import type { Entry } from '$lib/logbook/entry';
-import { devicesOf, membersOf, type Device, type Member } from './crew';
+import { devicesOf, EXAMPLE_CREW, membersOf, type Device, type Member } from './crew';
 import { Evenings } from './evenings';
 import { open, startOnPaper } from './opening';
-import { EXAMPLE_BUILD, EXAMPLE_CREW } from './ids';
+import { EXAMPLE_BUILD } from './ids';
 import { Pen } from './pen';
 import { readPlan } from './plan';
 import planText from './plan.csv?raw';
@@ -43,6 +43,7 @@ export interface GenerateOptions {
 
 export interface GeneratedLog {
 	readonly build: string;
+	readonly name: string;
 	readonly members: readonly Member[];
 	readonly devices: readonly Device[];
 	/** In an order in which each may be accepted: everything a line refers to comes before it. */
@@ -66,13 +67,14 @@ export function exampleLog({
 	today,
 	offset
 }: {
+	/** `2026-12-01` */
 	readonly today: string;
+	/** Minutes the clocks are ahead of Greenwich. */
 	readonly offset: number;
 }): GeneratedLog {
 	return generateLog({
 		seed: 'yarrow two 42',
 		build: EXAMPLE_BUILD,
-		name: 'Yarrow Two',
 		evenings: EVENINGS,
 		people: EXAMPLE_CREW,
 		devices: 6,
@@ -102,7 +104,8 @@ export function generateLog(options: GenerateOptions = {}): GeneratedLog {
 
 	const last = entries === undefined ? evenings : Infinity;
 	const shop = new Shop(pen, members, [first, ...rest], readPlan(planText), last);
-	open(shop, options.name ?? 'Yarrow Two', options.keyOf ?? noKey, options.crewLines ?? false);
+	const name = options.name ?? 'Yarrow Two';
+	open(shop, name, options.keyOf ?? noKey, options.crewLines ?? false);
 	shop.planSeams(seams);
 	startOnPaper(shop);
 	const crew = new Evenings(shop);
@@ -116,7 +119,7 @@ export function generateLog(options: GenerateOptions = {}): GeneratedLog {
 		if (shop.queue.length === 0 && entries !== undefined) shop.planSeams(130);
 	}
 	const all = entries === undefined ? pen.entries : pen.entries.slice(0, entries);
-	return { build: pen.build, members, devices, entries: all, batches: batchesOf(all) };
+	return { build: pen.build, name, members, devices, entries: all, batches: batchesOf(all) };
 }
 
 /** In days since 1970. */
