@@ -22,6 +22,7 @@ export const GUARDS: Readonly<Record<string, Guard>> = {
 	'/(shop)/builds/[build]/logbook': 'public',
 	'/(shop)/builds/[build]/logbook/[entry]': 'public',
 	'/(shop)/builds/[build]/not-accepted': 'public',
+	'/(shop)/builds/[build]/people': 'public',
 	'/(shop)/sync': 'public',
 	'/(desk)/account': 'person',
 	'/(desk)/builds/[build]/crew': 'person',

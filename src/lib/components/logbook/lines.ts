@@ -65,8 +65,8 @@ export interface WayOfLine {
 	readonly says?: string;
 }
 
-/** Where a line is on its way to the server; undefined once it is in the server's log. */
-export function wayOf({ outbox, seq, finding }: LoggedLine): WayOfLine | undefined {
+/** Where a line is on its way to the server; undefined once it is in the server's log, and where it never goes there. */
+export function wayOf({ outbox, seq, stays, finding }: LoggedLine): WayOfLine | undefined {
 	if (finding === 'entry.id_conflict')
 		return {
 			look: 'grease',
@@ -82,6 +82,7 @@ export function wayOf({ outbox, seq, finding }: LoggedLine): WayOfLine | undefin
 					? 'A second key was offered for a device that already has one. The first key holds.'
 					: sentence(finding)
 		};
+	if (stays) return undefined;
 	if (!outbox)
 		return seq === undefined ? { look: 'outline', words: 'only on this device' } : undefined;
 	const says = outbox.code === undefined ? {} : { says: sentence(outbox.code) };

@@ -9,6 +9,9 @@ export interface SyncText {
 	readonly refused?: string;
 }
 
+/** Of a build that is never synced. */
+export const STAYS: SyncText = { look: 'outline', words: 'stays here' };
+
 type Counts = Pick<
 	Status,
 	| 'phase'
