@@ -113,7 +113,7 @@ export class TestServer {
 	}
 }
 
-async function freePort(): Promise<number> {
+export async function freePort(): Promise<number> {
 	const probe = createServer();
 	probe.listen(0, '127.0.0.1');
 	await once(probe, 'listening');
