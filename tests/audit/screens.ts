@@ -2,6 +2,7 @@
 import { readdirSync } from 'node:fs';
 import { join } from 'node:path';
 import type { Locator, Page } from '@playwright/test';
+import { EXAMPLE_BUILD } from '../../src/lib/example/ids';
 import type { Role } from '../../src/lib/logbook/kinds';
 import { ROOT } from '../../src/bin/prepare.js';
 import type { Filled } from './fill';
@@ -53,6 +54,23 @@ const ENTRANCES: readonly Screen[] = [
 		path: () => '/',
 		act: press(/^DRIVEN/),
 		shows: text(/: driven$/)
+	},
+	{
+		name: 'the example',
+		route: '/(shop)/builds/[build]/wall',
+		state: 'filled',
+		who: 'nobody',
+		path: () => `/builds/${EXAMPLE_BUILD}/wall`,
+		shows: text('nothing here leaves this device')
+	},
+	{
+		name: 'the example, about to be left',
+		route: '/(shop)/builds/[build]/people',
+		state: 'filled',
+		who: 'nobody',
+		path: () => `/builds/${EXAMPLE_BUILD}/people`,
+		act: press('Leave'),
+		shows: heading('Leave the example?')
 	},
 	{
 		name: 'sign in',
@@ -391,6 +409,14 @@ const FILLED_BUILD: readonly Screen[] = [
 		who: 'crew',
 		path: ({ build }) => `/builds/${build}/logbook`,
 		shows: text(/^driven/)
+	},
+	{
+		name: 'crew, from the device',
+		route: '/(shop)/builds/[build]/people',
+		state: 'filled',
+		who: 'crew',
+		path: ({ build }) => `/builds/${build}/people`,
+		shows: heading('Crew')
 	},
 	{
 		name: 'logbook of a seam',

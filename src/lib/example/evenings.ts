@@ -49,7 +49,7 @@ export class Evenings {
 		// Sealant keeps nobody waiting: some evenings go to whatever is driven wet.
 		const wet = shop.evening > 40 && random.chance(0.12);
 		while (driven < goal && pen.clock < end) {
-			const seam = this.#next(wet);
+			const seam = this.#next(wet, crew);
 			if (!seam) break;
 			touched.add(seam);
 			driven += this.#workOn(seam, crew);
@@ -63,9 +63,14 @@ export class Evenings {
 		}
 	}
 
-	#next(wet: boolean): Seam | undefined {
+	/** Nobody drives alone what takes two. */
+	#next(wet: boolean, { bucker }: Crew): Seam | undefined {
 		const { queue } = this.#shop;
-		return (wet && queue.find(({ plan }) => plan.body.sealing === 'wet')) || queue[0];
+		const can = ({ plan }: Seam) => bucker !== undefined || plan.body.people !== 2;
+		return (
+			(wet && queue.find((seam) => seam.plan.body.sealing === 'wet' && can(seam))) ||
+			queue.find(can)
+		);
 	}
 
 	#whoIsThere(): Crew {

@@ -73,7 +73,7 @@ export function exampleLog({
 	readonly offset: number;
 }): GeneratedLog {
 	return generateLog({
-		seed: 'yarrow two 42',
+		seed: 'yarrow two 49',
 		build: EXAMPLE_BUILD,
 		evenings: EVENINGS,
 		people: EXAMPLE_CREW,
