@@ -6,18 +6,26 @@ import type { Seam } from '$lib/logbook/fold/seam';
 import { keepCrew, keepSeam, recallCrew, recallSeam } from './memory';
 import type { HowDriven, Pick, RunLength } from './run';
 
-/** A second press of a key within this time is the same press: gloves bounce, and so do pedals. */
-const APART = 1000;
+/** A press so soon after the one before is the same press: gloves bounce, and so do pedals. Nothing is said. */
+const BOUNCE = 350;
+/** Sooner than this after one that counted it may have been meant: it is not counted, and the screen says so. */
+const APART = 700;
 const ANSWER = 700;
+/** Felt in a glove, and told apart: ms on, off, on. */
+const WRITTEN = 60;
+const TOO_SOON = [30, 40, 30];
+const FAILED = [80, 80, 80];
 export const ZOOMS = [24, 66, 96, 128] as const;
 
-/** What was pressed: pressing the same twice within a second is pressing it once. */
+/** What was pressed. */
 export type Act = 'drive' | 'undo' | 'sheet';
 
 export interface Answer {
 	readonly big: string;
 	readonly holes: string;
 	readonly wrong?: boolean;
+	/** Nothing was written. */
+	readonly notice?: boolean;
 }
 
 export class BenchWork {
@@ -35,7 +43,9 @@ export class BenchWork {
 	#said = $state('');
 	/** The last line written here; until the fold shows it, what is next would still be what was just driven. */
 	#awaited = $state<string>();
+	/** When each key was pressed last and it counted; and when it was touched at all. */
 	readonly #pressed: Partial<Record<Act, number>> = {};
+	readonly #touched: Partial<Record<Act, number>> = {};
 	#timer: ReturnType<typeof setTimeout> | undefined;
 
 	constructor(store: DeviceStore, build: string, seam: () => Seam | undefined) {
@@ -136,25 +146,30 @@ export class BenchWork {
 	 * @returns whether they are; if not, `problem` says why and what was kept
 	 */
 	async write(act: Act, drafts: readonly Draft[], answer: Answer): Promise<boolean> {
+		if (drafts.length === 0) return false;
 		const now = performance.now();
-		const last = this.#pressed[act] ?? -Infinity;
-		if (!this.ready || drafts.length === 0 || now - last < APART) return false;
+		const bounced = now - (this.#touched[act] ?? -Infinity) < BOUNCE;
+		this.#touched[act] = now;
+		if (bounced) return false;
+		if (!this.ready || now - (this.#pressed[act] ?? -Infinity) < APART) {
+			this.#show({ big: 'tap again', holes: 'that tap was not counted', notice: true }, TOO_SOON);
+			return false;
+		}
 		this.#pressed[act] = now;
 		this.#busy = true;
 		this.#problem = undefined;
 		try {
 			const entries = await appendEntries(this.#store, this.#build, drafts);
-			this.#pressed[act] = performance.now();
 			this.#awaited = entries.findLast((entry) => entry.seam === this.#seam()?.id)?.id;
 			this.#pick = undefined;
-			this.#show(answer);
+			this.#show(answer, WRITTEN);
 			return true;
 		} catch (error) {
 			this.#problem =
 				error instanceof DeviceError
 					? error.message
 					: 'This could not be written. Nothing was saved. Reload the page and do it again.';
-			vibrate([80, 80, 80]);
+			vibrate(FAILED);
 			return false;
 		} finally {
 			this.#busy = false;
@@ -165,10 +180,10 @@ export class BenchWork {
 		clearTimeout(this.#timer);
 	}
 
-	#show(answer: Answer): void {
+	#show(answer: Answer, pattern: number | number[]): void {
 		this.#answer = answer;
 		this.#said = `${answer.big} ${answer.holes}`;
-		vibrate(60);
+		vibrate(pattern);
 		clearTimeout(this.#timer);
 		this.#timer = setTimeout(() => {
 			this.#answer = undefined;

@@ -6,7 +6,7 @@ export const ROLE_MAY: Readonly<Record<Role, string>> = {
 	builder: 'plans, drives and bucks, logs, puts defects right',
 	inspector:
 		'logs like a builder, decides on defects and signs what was seen; not an airworthiness approval',
-	follower: 'sees progress, writes notes and adds photos'
+	follower: 'sees progress and writes notes'
 };
 
 /** Those that can be given; the owner hands the build over instead. */

@@ -98,7 +98,7 @@ const SAID: { [K in Kind]: readonly [Body<K>, string] } = {
 	],
 	'defect.fixed': [
 		{ defect: idOf(9), holes, action: 'replaced_oversize' },
-		'defect 27–31: replaced, next size up'
+		'about the defect at 27–31: replaced, next size up'
 	],
 	'step.done': [{ step: idOf(9), value: { number: '25', unit: 'in-lb' } }, 'step done · 25 in-lb'],
 	'closing.listed': [

@@ -199,7 +199,7 @@ function describeEntry(entry: Entry, names: Names): string {
 			);
 		case 'defect.fixed':
 			return join(
-				`defect ${holes()}: ${FIX_WORDS[entry.body.action]}`,
+				`about the defect at ${holes()}: ${FIX_WORDS[entry.body.action]}`,
 				decidedBy(entry.body, names),
 				entry.body.note
 			);

@@ -42,8 +42,8 @@ export function numbersText(numbers: readonly number[]): string {
 	return ranges.map(([from, to]) => (from === to ? String(from) : `${from}–${to}`)).join(', ');
 }
 
-/** A part number as stamped: `MS20426AD3-3.5` as "MS20426 AD 3-3.5". What is not one stays as it was read. */
+/** A part number as stamped: `ms20426ad3-3.5` as "MS20426 AD 3-3.5". What is not one stays as it was read. */
 export function stamped(callout: string): string {
-	const parts = /^(MS|NAS|AN|CR|CCR)(\d+)([A-Z]{1,3})(\d.*)$/.exec(callout);
+	const parts = /^(MS|NAS|AN|CR|CCR)(\d+)([A-Z]{1,3})(\d.*)$/.exec(callout.toUpperCase());
 	return parts ? `${parts[1]}${parts[2]} ${parts[3]} ${parts[4]}` : callout;
 }

@@ -10,6 +10,7 @@ it('numbers are said as ranges, each once, whatever their order', () => {
 it('part numbers are set as stamped, and what is none stays as read', () => {
 	expect(stamped('MS20426AD3-3.5')).toBe('MS20426 AD 3-3.5');
 	expect(stamped('MS20470AD4-4')).toBe('MS20470 AD 4-4');
+	expect(stamped('ms20470ad4-4')).toBe('MS20470 AD 4-4');
 	expect(stamped('the short ones')).toBe('the short ones');
 });
 
