@@ -8,8 +8,12 @@ import {
 	signIn,
 	signOut
 } from './accounts';
+import { verifyPassword } from './hashing';
 import { findSession } from './sessions';
 import { temporaryDb } from './testing';
+
+// Watched, not replaced: whether a password was hashed at all is what an answer's time would tell.
+vi.mock('./hashing', { spy: true });
 
 const PASSWORD = 'longeron flap gusset';
 const NEW = 'doubler rib nose skin';
@@ -105,8 +109,12 @@ describe('signing in', () => {
 
 	it('answers the same for a wrong password, for nobody, and for what is no address', async () => {
 		await registered();
+		const hashing = vi.mocked(verifyPassword);
+		hashing.mockClear();
 		const wrong = await signInAs(erna.email, 'wrong password');
+		expect(hashing).toHaveBeenCalledTimes(1);
 		expect(await signInAs('nobody@example.org', 'wrong password')).toEqual(wrong);
+		expect(hashing).toHaveBeenCalledTimes(2);
 		expect(await signInAs('x'.repeat(100_000), 'x'.repeat(100_000))).toEqual(wrong);
 	});
 
